@@ -1,0 +1,16 @@
+//! `ringfield`: estimates what a board's ringing nets radiate, before the paid laboratory visit.
+
+mod front;
+
+use std::process::ExitCode;
+
+use clap::Parser;
+use front::{Arguments, Command, check, limits};
+
+fn main() -> ExitCode {
+    let outcome = match Arguments::parse().command {
+        Command::Check(options) => check::run(&options),
+        Command::Limits(options) => limits::run(&options),
+    };
+    front::finish(outcome)
+}

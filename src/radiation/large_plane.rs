@@ -1,0 +1,212 @@
+//! A plane so large that a wave from the antenna finds no edge: the closed form.
+//!
+//! The wave doubles the vertical electric and the tangential magnetic field at the plane. With
+//! u = sin(theta) cos(phi) taken from a segment's direction, height h, substrate er and capacitance c'
+//! per length,
+//!
+//! ```text
+//! E_theta = (w mu0 2h / 4 pi r) { k cos(phi) Int I e^{jkux} dx - (w c' / er) sin(theta) Int V e^{jkux} dx }
+//! E_phi   = -(w mu0 2h / 4 pi r)  k cos(theta) sin(phi) Int I e^{jkux} dx
+//! ```
+//!
+//! which, integrated over the half sphere, gives the powers that Lewin ("Radiation from discontinuities
+//! in strip-line", Proc. IEE 107C, 1960, 163-170) published for an open and a matched end.
+
+use super::{Antenna, LitSegment};
+use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
+use num_complex::Complex64;
+use std::f64::consts::{PI, TAU};
+
+/// The board's plane, taken as endless.
+#[derive(Debug, Clone, Copy, Default)]
+pub struct LargePlane;
+
+/// Charge and current of a net as seen from one direction, volts when put into the field.
+#[derive(Debug, Clone, Copy, Default)]
+struct Moments {
+    /// k h Int I
+    loops: Complex64,
+    /// (w c' / er) h Int V
+    charges: Complex64,
+}
+
+impl Antenna for LargePlane {
+    fn strongest_v(&self, frequency_hz: f64, segments: &[LitSegment]) -> f64 {
+        let squared = match positions_on_one_line(segments) {
+            Some(positions_m) => strongest_of_straight(frequency_hz, segments, &positions_m),
+            None => strongest_of_any(frequency_hz, segments),
+        };
+        scale_ohm_per_m(frequency_hz) * squared.sqrt()
+    }
+}
+
+/// w mu0 2 / 4 pi
+fn scale_ohm_per_m(frequency_hz: f64) -> f64 {
+    TAU * frequency_hz * MU0_H_PER_M * 2.0 / (4.0 * PI)
+}
+
+/// The two components of the far field towards a direction, (theta, phi) in radians from the vertical
+/// and from x, times the distance; volts.
+pub(super) fn field_toward(
+    frequency_hz: f64,
+    segments: &[LitSegment],
+    theta: f64,
+    phi: f64,
+) -> [Complex64; 2] {
+    let k = TAU * frequency_hz / LIGHT_SPEED_M_PER_S;
+    let (sin_theta, cos_theta) = theta.sin_cos();
+    let (sin_phi, cos_phi) = phi.sin_cos();
+    let mut field = [Complex64::ZERO; 2];
+    for lit in segments {
+        let [dx, dy] = lit.segment.direction;
+        let along = cos_phi * dx + sin_phi * dy;
+        let across = sin_phi * dx - cos_phi * dy;
+        let [x, y] = lit.segment.start_m;
+        let start = Complex64::cis(k * sin_theta * (cos_phi * x + sin_phi * y));
+        let moments = moments(frequency_hz, lit, sin_theta * along);
+        field[0] += start * (along * moments.loops - sin_theta * moments.charges);
+        field[1] -= start * cos_theta * across * moments.loops;
+    }
+    field.map(|component| scale_ohm_per_m(frequency_hz) * component)
+}
+
+/// Moments of one segment, its start as the phase reference.
+fn moments(frequency_hz: f64, lit: &LitSegment, u: f64) -> Moments {
+    let omega = TAU * frequency_hz;
+    let k = omega / LIGHT_SPEED_M_PER_S;
+    let segment = lit.segment;
+    let half_m = segment.length_m / 2.0;
+    // Int_0^L e^{jqx} dx = L e^{jqL/2} sin(qL/2) / (qL/2)
+    let travel = Complex64::cis(k * u * half_m) * segment.length_m;
+    let setback = Complex64::cis(-lit.beta_rad_per_m * half_m);
+    let outward = lit.outward_v * sinc((k * u - lit.beta_rad_per_m) * half_m);
+    let inward = lit.inward_v * sinc((k * u + lit.beta_rad_per_m) * half_m);
+    let common = travel * setback * segment.height_m;
+    Moments {
+        loops: common * (outward - inward) * (k / segment.impedance_ohm),
+        charges: common
+            * (outward + inward)
+            * (omega * segment.capacitance_f_per_m() / segment.permittivity),
+    }
+}
+
+fn sinc(x: f64) -> f64 {
+    if x.abs() < 1e-6 { 1.0 } else { x.sin() / x }
+}
+
+/// Where the segments start on the line they all lie on, in its direction, if there is one.
+fn positions_on_one_line(segments: &[LitSegment]) -> Option<Vec<f64>> {
+    let first = segments.first()?.segment;
+    let [dx, dy] = first.direction;
+    segments
+        .iter()
+        .map(|LitSegment { segment, .. }| {
+            let (x, y) = (
+                segment.start_m[0] - first.start_m[0],
+                segment.start_m[1] - first.start_m[1],
+            );
+            let turned = segment.direction[0] * dy - segment.direction[1] * dx;
+            let same_way = segment.direction[0] * dx + segment.direction[1] * dy > 0.0;
+            let aside_m = x * dy - y * dx;
+            (same_way && turned.abs() < 1e-9 && aside_m.abs() < 1e-9).then_some(x * dx + y * dy)
+        })
+        .collect()
+}
+
+/// The largest squared field of segments on one line.
+///
+/// For a given u the squared field |A|^2 (1 + u^2) - 2 u Re(A B*) + s^2 (|B|^2 - |A|^2), A the loops, B
+/// the charges and s = sin(theta), is largest at an end of |u| <= s <= 1: along the plane, where
+/// it is |u A - B|^2, or straight over the line, where it is |A - u B|^2. Only u needs a search.
+fn strongest_of_straight(frequency_hz: f64, segments: &[LitSegment], positions_m: &[f64]) -> f64 {
+    let k = TAU * frequency_hz / LIGHT_SPEED_M_PER_S;
+    let extent_m = segments
+        .iter()
+        .zip(positions_m)
+        .map(|(lit, start_m)| start_m + lit.segment.length_m)
+        .fold(0.0, f64::max);
+    let squared = |u: f64| {
+        let sum =
+            segments
+                .iter()
+                .zip(positions_m)
+                .fold(Moments::default(), |sum, (lit, position_m)| {
+                    let start = Complex64::cis(k * u * position_m);
+                    let Moments { loops, charges } = moments(frequency_hz, lit, u);
+                    Moments {
+                        loops: sum.loops + start * loops,
+                        charges: sum.charges + start * charges,
+                    }
+                });
+        let along_plane = (u * sum.loops - sum.charges).norm_sqr();
+        along_plane.max((sum.loops - u * sum.charges).norm_sqr())
+    };
+    let steps = 16 + (k * extent_m * 4.0) as usize;
+    let step = 2.0 / steps as f64;
+    let samples: Vec<f64> = (0..=steps)
+        .map(|i| squared(-1.0 + i as f64 * step))
+        .collect();
+    let peak = samples
+        .windows(3)
+        .map(|w| vertex(w[0], w[1], w[2]))
+        .fold(0.0, f64::max);
+    peak.max(samples[0]).max(samples[steps])
+}
+
+/// The largest squared field of segments in any place, over a grid of directions on the half sphere.
+fn strongest_of_any(frequency_hz: f64, segments: &[LitSegment]) -> f64 {
+    let k = TAU * frequency_hz / LIGHT_SPEED_M_PER_S;
+    let mut extent_m: f64 = 0.0;
+    for a in segments {
+        for b in segments {
+            let [x, y] = a.segment.start_m;
+            let apart_m = (x - b.segment.start_m[0]).hypot(y - b.segment.start_m[1]);
+            extent_m = extent_m.max(apart_m + a.segment.length_m.max(b.segment.length_m));
+        }
+    }
+    let scale = scale_ohm_per_m(frequency_hz);
+    let squared = |theta: f64, phi: f64| {
+        let [e_theta, e_phi] = field_toward(frequency_hz, segments, theta, phi);
+        (e_theta.norm_sqr() + e_phi.norm_sqr()) / (scale * scale)
+    };
+    // Fine against the pattern's lobes, about 1 / (k extent) wide.
+    let quarter_steps = 12 + (k * extent_m * 3.0) as usize;
+    let step = PI / 2.0 / quarter_steps as f64;
+    let mut best = (0.0, 0.0, 0.0);
+    for i in 0..=quarter_steps {
+        for j in 0..4 * quarter_steps {
+            let (theta, phi) = (i as f64 * step, j as f64 * step);
+            let value = squared(theta, phi);
+            if value > best.0 {
+                best = (value, theta, phi);
+            }
+        }
+    }
+    let (value, theta, phi) = best;
+    let around = vertex(
+        squared(theta, phi - step),
+        value,
+        squared(theta, phi + step),
+    );
+    // Below the plane there is no field to go down to.
+    let upward = if theta + step > PI / 2.0 {
+        value
+    } else {
+        vertex(
+            squared(theta - step, phi),
+            value,
+            squared(theta + step, phi),
+        )
+    };
+    around + upward - value
+}
+
+/// Height of the parabola through three even samples if they hold a peak, else the middle one.
+fn vertex(left: f64, middle: f64, right: f64) -> f64 {
+    let bend = left - 2.0 * middle + right;
+    if bend < 0.0 && middle >= left && middle >= right {
+        middle - (right - left).powi(2) / (8.0 * bend)
+    } else {
+        middle
+    }
+}

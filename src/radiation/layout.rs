@@ -1,0 +1,138 @@
+//! Where a net lies on the board: its radiating lines, cut into straight segments.
+
+use crate::board::Along;
+use crate::line::Place;
+use crate::ringing::Network;
+
+/// The outer lines of a net as straight segments, and how much of the net they leave out.
+#[derive(Debug, Clone)]
+pub struct Layout {
+    /// The radiating segments.
+    pub segments: Vec<Segment>,
+    /// Length of all lines between two planes.
+    pub buried_m: f64,
+    /// Length of all lines.
+    pub total_m: f64,
+}
+
+/// A straight piece of a line over the plane.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Segment {
+    /// Number of its line in the network.
+    pub line: usize,
+    /// Where it starts on the plane.
+    pub start_m: [f64; 2],
+    /// The way it runs, a unit vector.
+    pub direction: [f64; 2],
+    /// Its length.
+    pub length_m: f64,
+    /// From the line's near end to the segment's start.
+    pub from_near_m: f64,
+    /// From the line's far end to the segment's end.
+    pub from_far_m: f64,
+    /// Height over the plane.
+    pub height_m: f64,
+    /// Relative permittivity of what lies under it.
+    pub permittivity: f64,
+    /// The line's impedance.
+    pub impedance_ohm: f64,
+    /// The line's flight time per length.
+    pub delay_s_per_m: f64,
+}
+
+impl Segment {
+    /// Capacitance per length.
+    pub fn capacitance_f_per_m(&self) -> f64 {
+        self.delay_s_per_m / self.impedance_ohm
+    }
+}
+
+/// Where a line ends, for the one that continues it.
+#[derive(Clone, Copy)]
+struct Tip {
+    at_m: [f64; 2],
+    direction: [f64; 2],
+}
+
+impl Layout {
+    /// Lays a net out. A line with points lies on them; one without continues, straight on, what is
+    /// before it, so that a branch lies beside the path it leaves. The fields of lines side by side add
+    /// up, which makes that the careful choice.
+    pub fn of(network: &Network, along: Along) -> Self {
+        let mut layout = Self {
+            segments: Vec::new(),
+            buried_m: 0.0,
+            total_m: 0.0,
+        };
+        let direction = match along {
+            Along::Length => [1.0, 0.0],
+            Along::Width => [0.0, 1.0],
+        };
+        let origin = Tip {
+            at_m: [0.0, 0.0],
+            direction,
+        };
+        let mut tips: Vec<Tip> = Vec::with_capacity(network.spans.len());
+        for (number, span) in network.spans.iter().enumerate() {
+            let line = &span.line;
+            let start = span.after.map_or(origin, |before| tips[before]);
+            let route = if line.points_m.is_empty() {
+                let end_m = step(start.at_m, start.direction, line.length_m);
+                vec![start.at_m, end_m]
+            } else {
+                line.points_m.clone()
+            };
+            layout.total_m += line.length_m;
+            let height_m = match line.place {
+                Place::Outer { height_m } => height_m,
+                Place::Buried => {
+                    layout.buried_m += line.length_m;
+                    0.0
+                }
+            };
+            let mut tip = start;
+            let mut from_near_m = 0.0;
+            for pair in route.windows(2) {
+                let [[x0, y0], [x1, y1]] = [pair[0], pair[1]];
+                let length_m = (x1 - x0).hypot(y1 - y0);
+                if length_m == 0.0 {
+                    continue;
+                }
+                let direction = [(x1 - x0) / length_m, (y1 - y0) / length_m];
+                tip = Tip {
+                    at_m: pair[1],
+                    direction,
+                };
+                if height_m > 0.0 {
+                    layout.segments.push(Segment {
+                        line: number,
+                        start_m: pair[0],
+                        direction,
+                        length_m,
+                        from_near_m,
+                        from_far_m: (line.length_m - from_near_m - length_m).max(0.0),
+                        height_m,
+                        permittivity: line.permittivity,
+                        impedance_ohm: line.impedance_ohm,
+                        delay_s_per_m: line.delay_s / line.length_m,
+                    });
+                }
+                from_near_m += length_m;
+            }
+            tips.push(tip);
+        }
+        layout
+    }
+
+    /// Sum over the segments of height times length: the area between the net and its plane.
+    pub fn loop_area_m2(&self) -> f64 {
+        self.segments
+            .iter()
+            .map(|segment| segment.height_m * segment.length_m)
+            .sum()
+    }
+}
+
+fn step([x, y]: [f64; 2], [dx, dy]: [f64; 2], length_m: f64) -> [f64; 2] {
+    [x + dx * length_m, y + dy * length_m]
+}

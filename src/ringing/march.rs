@@ -1,0 +1,453 @@
+//! The march: step by step until a whole period repeats.
+
+use super::cluster::{Cluster, Load};
+use super::delay::Delay;
+use super::network::{Branch, BranchEnd, DRIVER_NODE, Network};
+use ndarray::Array2;
+
+/// Largest share of the swing by which the settled waveform may still be off.
+const SETTLED: f64 = 1e-6;
+/// Most steps of one march, about a second's worth.
+const MOST_STEPS: usize = 30_000_000;
+
+/// One settled period of a net.
+#[derive(Debug, Clone)]
+pub struct Settled {
+    /// Voltages and currents at the driver and the receivers.
+    pub waveform: SettledWaveform,
+    /// The waves on each line, in the order of [`Network::spans`].
+    pub waves: Vec<WaveRecord>,
+    /// How it was reached.
+    pub report: MarchReport,
+}
+
+/// One settled period, sampled evenly from the start of the rising edge.
+#[derive(Debug, Clone, PartialEq)]
+pub struct SettledWaveform {
+    /// Time from one sample to the next.
+    pub step_s: f64,
+    /// Voltage at the driver's pin.
+    pub driver_v: Vec<f64>,
+    /// Current out of the driver.
+    pub driver_a: Vec<f64>,
+    /// Voltage at each receiver, in the order of the path.
+    pub receivers_v: Vec<Vec<f64>>,
+}
+
+/// The two travelling waves of a line over one settled period, volts.
+#[derive(Debug, Clone)]
+pub struct WaveRecord {
+    /// The wave away from the driver.
+    pub outward_v: Vec<f64>,
+    /// The wave back to the driver.
+    pub inward_v: Vec<f64>,
+    /// Where they were taken.
+    pub taken: Taken,
+}
+
+/// Where on a line its two waves were taken.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Taken {
+    /// Each where it sets out: outward at the near end, inward at the far end.
+    AtStart,
+    /// Both in the middle of a line too short to carry waves.
+    InMiddle,
+}
+
+/// How the settled waveform was reached.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct MarchReport {
+    /// Steps in one period.
+    pub steps_per_period: usize,
+    /// Periods marched until one repeated.
+    pub periods: usize,
+    /// How far the last period may still be from the settled one, as a share of the swing.
+    pub residual: f64,
+    /// Whether that is small enough.
+    pub settled: bool,
+}
+
+/// Marches a net, in `steps_per_period` even steps, until a whole period repeats.
+///
+/// A net that does not settle within the longest march is returned as it stands, with the residual
+/// in its report.
+pub fn settle(network: &Network, steps_per_period: usize) -> Settled {
+    let mut march = March::new(network, steps_per_period);
+    let swing_v = network.source.swing_v();
+    let most_periods = (MOST_STEPS / steps_per_period).max(4);
+    let mut last_change = f64::INFINITY;
+    let mut report = MarchReport {
+        steps_per_period,
+        periods: 0,
+        residual: f64::INFINITY,
+        settled: false,
+    };
+    while report.periods < most_periods && !report.settled {
+        let change = march.one_period() / swing_v;
+        report.periods += 1;
+        // Changes that shrink by a constant ratio leave this sum of all that are still to come.
+        let ratio = (change / last_change).min(1.0 - 1e-9);
+        report.residual = change.max(change * ratio / (1.0 - ratio));
+        report.settled = report.residual < SETTLED;
+        last_change = change;
+    }
+    march.into_settled(report)
+}
+
+/// The state of a march.
+struct March<'a> {
+    network: &'a Network,
+    step_s: f64,
+    /// The driver's state at each step of the period: conductance and short-circuit current.
+    drive: Vec<(f64, f64)>,
+    base_conductance_s: f64,
+    lines: Vec<LineState>,
+    branches: Vec<Companion>,
+    clusters: Vec<Cluster>,
+    injected_a: Vec<f64>,
+    voltage_v: Vec<f64>,
+    waveform: SettledWaveform,
+}
+
+/// A line on the march.
+enum LineState {
+    /// Two delayed waves.
+    Waves(TravellingWaves),
+    /// Shorter than the delays can be: one pi section of lumped parts, seen in its middle.
+    Lumped {
+        near: usize,
+        far: usize,
+        branch: usize,
+        impedance_ohm: f64,
+        record: [Vec<f64>; 2],
+    },
+}
+
+struct TravellingWaves {
+    near: usize,
+    far: usize,
+    conductance_s: f64,
+    outward: Delay,
+    inward: Delay,
+    /// The waves that arrive now, at the near and the far end.
+    arrived: [f64; 2],
+}
+
+impl<'a> March<'a> {
+    fn new(network: &'a Network, steps: usize) -> Self {
+        let step_s = network.period_s / steps as f64;
+        let source = &network.source;
+        let low_v = source.low_v();
+        let mut branches: Vec<Branch> = network.branches.clone();
+        let mut lines = Vec::with_capacity(network.spans.len());
+        for span in &network.spans {
+            let (near, far) = (span.near, span.far);
+            let impedance_ohm = span.line.impedance_ohm;
+            let delay_steps = span.line.delay_s / step_s;
+            lines.push(if delay_steps >= Delay::SHORTEST {
+                let wave = Delay::new(delay_steps, steps, low_v / 2.0);
+                LineState::Waves(TravellingWaves {
+                    near,
+                    far,
+                    conductance_s: 1.0 / impedance_ohm,
+                    outward: wave.clone(),
+                    inward: wave,
+                    arrived: [0.0; 2],
+                })
+            } else {
+                let branch = branches.len();
+                branches.extend(pi_section(near, far, impedance_ohm, span.line.delay_s));
+                let record = [vec![0.0; steps], vec![0.0; steps]];
+                LineState::Lumped {
+                    near,
+                    far,
+                    branch,
+                    impedance_ohm,
+                    record,
+                }
+            });
+        }
+        let branches: Vec<Companion> = branches
+            .iter()
+            .map(|branch| Companion::new(branch, step_s, low_v))
+            .collect();
+        let drive = (0..steps)
+            .map(|step| {
+                let high_share = source.high_share(step as f64 * step_s);
+                let conductance_s = source.conductance_s(high_share);
+                (conductance_s, conductance_s * source.voltage_v(high_share))
+            })
+            .collect();
+        let base_conductance_s = source.conductance_s(0.0);
+        let clusters = clusters(network, &lines, &branches, base_conductance_s);
+        Self {
+            network,
+            step_s,
+            drive,
+            base_conductance_s,
+            lines,
+            branches,
+            clusters,
+            injected_a: vec![0.0; network.node_count],
+            voltage_v: vec![low_v; network.node_count],
+            waveform: SettledWaveform {
+                step_s,
+                driver_v: vec![low_v; steps],
+                driver_a: vec![0.0; steps],
+                receivers_v: vec![vec![low_v; steps]; network.inputs.len()],
+            },
+        }
+    }
+
+    /// Marches one period; returns the largest change of any wave or voltage since the last one.
+    fn one_period(&mut self) -> f64 {
+        (0..self.drive.len()).fold(0.0, |largest, step| self.one_step(step).max(largest))
+    }
+
+    fn one_step(&mut self, step: usize) -> f64 {
+        self.injected_a.fill(0.0);
+        for line in &mut self.lines {
+            if let LineState::Waves(waves) = line {
+                waves.arrive(&mut self.injected_a);
+            }
+        }
+        for branch in &mut self.branches {
+            branch.inject(&mut self.injected_a);
+        }
+        let (conductance_s, short_circuit_a) = self.drive[step];
+        self.injected_a[DRIVER_NODE] += short_circuit_a;
+        let driver_change_s = conductance_s - self.base_conductance_s;
+        for cluster in &mut self.clusters {
+            cluster.solve(&self.injected_a, driver_change_s, &mut self.voltage_v);
+        }
+        for branch in &mut self.branches {
+            branch.advance(&self.voltage_v);
+        }
+        let mut largest: f64 = 0.0;
+        for line in &mut self.lines {
+            largest = largest.max(line.leave(step, &self.voltage_v, &self.branches));
+        }
+        let driver_v = self.voltage_v[DRIVER_NODE];
+        largest = largest.max((driver_v - self.waveform.driver_v[step]).abs());
+        self.waveform.driver_v[step] = driver_v;
+        self.waveform.driver_a[step] = short_circuit_a - conductance_s * driver_v;
+        for (record, input) in self
+            .waveform
+            .receivers_v
+            .iter_mut()
+            .zip(&self.network.inputs)
+        {
+            let voltage_v = self.voltage_v[input.node];
+            largest = largest.max((voltage_v - record[step]).abs());
+            record[step] = voltage_v;
+        }
+        largest
+    }
+
+    fn into_settled(self, report: MarchReport) -> Settled {
+        debug_assert_eq!(self.step_s, self.waveform.step_s);
+        let waves = self.lines.into_iter().map(LineState::into_record).collect();
+        Settled {
+            waveform: self.waveform,
+            waves,
+            report,
+        }
+    }
+}
+
+impl TravellingWaves {
+    fn arrive(&mut self, injected_a: &mut [f64]) {
+        self.arrived = [self.inward.arriving(), self.outward.arriving()];
+        injected_a[self.near] += 2.0 * self.conductance_s * self.arrived[0];
+        injected_a[self.far] += 2.0 * self.conductance_s * self.arrived[1];
+    }
+}
+
+impl LineState {
+    /// Sends the waves that leave now; returns the largest change since one period ago.
+    fn leave(&mut self, step: usize, voltage_v: &[f64], branches: &[Companion]) -> f64 {
+        match self {
+            Self::Waves(waves) => {
+                let outward = waves.outward.send(voltage_v[waves.near] - waves.arrived[0]);
+                let inward = waves.inward.send(voltage_v[waves.far] - waves.arrived[1]);
+                outward.abs().max(inward.abs())
+            }
+            Self::Lumped {
+                near,
+                far,
+                branch,
+                impedance_ohm,
+                record,
+            } => {
+                let middle_v = (voltage_v[*near] + voltage_v[*far]) / 2.0;
+                let across_v = *impedance_ohm * branches[*branch].current_a;
+                let new = [(middle_v + across_v) / 2.0, (middle_v - across_v) / 2.0];
+                let mut largest: f64 = 0.0;
+                for (record, new) in record.iter_mut().zip(new) {
+                    largest = largest.max((new - record[step]).abs());
+                    record[step] = new;
+                }
+                largest
+            }
+        }
+    }
+
+    fn into_record(self) -> WaveRecord {
+        match self {
+            Self::Waves(waves) => WaveRecord {
+                outward_v: waves.outward.last_period(),
+                inward_v: waves.inward.last_period(),
+                taken: Taken::AtStart,
+            },
+            Self::Lumped {
+                record: [outward_v, inward_v],
+                ..
+            } => WaveRecord {
+                outward_v,
+                inward_v,
+                taken: Taken::InMiddle,
+            },
+        }
+    }
+}
+
+/// A line too short for its waves to be told apart: its inductance between halves of its capacitance.
+fn pi_section(near: usize, far: usize, impedance_ohm: f64, delay_s: f64) -> [Branch; 3] {
+    let half = |from| Branch {
+        from,
+        to: BranchEnd::RailV(0.0),
+        resistance_ohm: 0.0,
+        inductance_h: 0.0,
+        capacitance_f: Some(delay_s / impedance_ohm / 2.0),
+    };
+    let inductance = Branch {
+        from: near,
+        to: BranchEnd::Node(far),
+        resistance_ohm: 0.0,
+        inductance_h: impedance_ohm * delay_s,
+        capacitance_f: None,
+    };
+    [inductance, half(near), half(far)]
+}
+
+/// The trapezoidal companion of a branch: a conductance with a voltage source that carries its past.
+struct Companion {
+    from: usize,
+    to: BranchEnd,
+    conductance_s: f64,
+    /// 2 L / h
+    inductor_ohm: f64,
+    /// h / 2 C
+    capacitor_ohm: f64,
+    current_a: f64,
+    inductor_v: f64,
+    capacitor_v: f64,
+    /// The source for this step.
+    past_v: f64,
+}
+
+impl Companion {
+    /// Least resistance of a branch: a dead short to a rail has to have some.
+    const LEAST_OHM: f64 = 1e-6;
+
+    fn new(branch: &Branch, step_s: f64, start_v: f64) -> Self {
+        let inductor_ohm = 2.0 * branch.inductance_h / step_s;
+        let capacitor_ohm = branch.capacitance_f.map_or(0.0, |c| step_s / (2.0 * c));
+        let total_ohm = branch.resistance_ohm + inductor_ohm + capacitor_ohm;
+        let capacitor_v = match (branch.capacitance_f, branch.to) {
+            (Some(_), BranchEnd::RailV(rail_v)) => start_v - rail_v,
+            _ => 0.0,
+        };
+        Self {
+            from: branch.from,
+            to: branch.to,
+            conductance_s: 1.0 / total_ohm.max(Self::LEAST_OHM),
+            inductor_ohm,
+            capacitor_ohm,
+            current_a: 0.0,
+            inductor_v: 0.0,
+            capacitor_v,
+            past_v: 0.0,
+        }
+    }
+
+    fn inject(&mut self, injected_a: &mut [f64]) {
+        self.past_v = self.capacitor_v + (self.capacitor_ohm - self.inductor_ohm) * self.current_a
+            - self.inductor_v;
+        let current_a = self.conductance_s * self.past_v;
+        injected_a[self.from] += current_a;
+        match self.to {
+            BranchEnd::Node(to) => injected_a[to] -= current_a,
+            BranchEnd::RailV(rail_v) => injected_a[self.from] += self.conductance_s * rail_v,
+        }
+    }
+
+    fn advance(&mut self, voltage_v: &[f64]) {
+        let to_v = match self.to {
+            BranchEnd::Node(to) => voltage_v[to],
+            BranchEnd::RailV(rail_v) => rail_v,
+        };
+        let current_a = self.conductance_s * (voltage_v[self.from] - to_v - self.past_v);
+        self.inductor_v = self.inductor_ohm * (current_a - self.current_a) - self.inductor_v;
+        self.capacitor_v += self.capacitor_ohm * (current_a + self.current_a);
+        self.current_a = current_a;
+    }
+}
+
+/// The clusters of nodes that lumped branches join, with everything that loads them.
+fn clusters(
+    network: &Network,
+    lines: &[LineState],
+    branches: &[Companion],
+    driver_s: f64,
+) -> Vec<Cluster> {
+    let count = network.node_count;
+    let mut conductance = Array2::<f64>::zeros((count, count));
+    conductance[[DRIVER_NODE, DRIVER_NODE]] += driver_s;
+    for line in lines {
+        if let LineState::Waves(waves) = line {
+            conductance[[waves.near, waves.near]] += waves.conductance_s;
+            conductance[[waves.far, waves.far]] += waves.conductance_s;
+        }
+    }
+    // Every node starts in a cluster of its own; a branch between two makes them one.
+    let mut cluster_of: Vec<usize> = (0..count).collect();
+    for branch in branches {
+        let (from, g) = (branch.from, branch.conductance_s);
+        conductance[[from, from]] += g;
+        if let BranchEnd::Node(to) = branch.to {
+            conductance[[to, to]] += g;
+            conductance[[from, to]] -= g;
+            conductance[[to, from]] -= g;
+            let (kept, merged) = (cluster_of[from], cluster_of[to]);
+            for cluster in &mut cluster_of {
+                if *cluster == merged {
+                    *cluster = kept;
+                }
+            }
+        }
+    }
+    (0..count)
+        .map(|id| {
+            (0..count)
+                .filter(|&node| cluster_of[node] == id)
+                .collect::<Vec<usize>>()
+        })
+        .filter(|nodes| !nodes.is_empty())
+        .map(|nodes| {
+            let mut loads: Vec<(usize, Load)> = network
+                .inputs
+                .iter()
+                .filter(|input| input.clamps.any() && nodes.contains(&input.node))
+                .map(|input| (input.node, Load::Clamps(input.clamps)))
+                .collect();
+            if nodes.contains(&DRIVER_NODE) && !network.source.is_steady() {
+                loads.push((DRIVER_NODE, Load::DriverChange));
+            }
+            let block = Array2::from_shape_fn((nodes.len(), nodes.len()), |(row, column)| {
+                conductance[[nodes[row], nodes[column]]]
+            });
+            Cluster::new(nodes, &block, loads)
+        })
+        .collect()
+}

@@ -1,0 +1,23 @@
+//! Ringing: one settled period of the waves on a net.
+//!
+//! The method of characteristics (Branin, "Transient analysis of lossless transmission lines",
+//! Proc. IEEE 55, 1967): each line carries two travelling waves, delayed by its flight time; between
+//! lines, each cluster of nodes joined by lumped parts is solved alone from the waves that arrive,
+//! the parts' trapezoidal companions and the clamps. The march goes on until a whole period repeats,
+//! so that the transform of that period has no leakage.
+
+mod clamp;
+mod cluster;
+mod delay;
+mod march;
+mod network;
+mod rest;
+mod source;
+mod steps;
+
+pub use clamp::Clamps;
+pub use march::{MarchReport, Settled, SettledWaveform, Taken, WaveRecord, settle};
+pub use network::{Branch, BranchEnd, DRIVER_NODE, Input, Network, Span};
+pub use rest::rest_levels_v;
+pub use source::Source;
+pub use steps::steps_per_period;

@@ -1,0 +1,28 @@
+//! Pictures: first a list of shapes, then painted as PNG or SVG.
+
+mod axis;
+mod canvas;
+mod page;
+mod paint;
+mod picture;
+mod place;
+mod readings;
+mod spectrum;
+mod waveform;
+
+pub use picture::Picture;
+pub use spectrum::spectrum_picture;
+pub use waveform::waveform_picture;
+
+use plotters::style::RGBColor;
+
+// The palette of Okabe and Ito (2008), told apart with any colour vision; values from memory.
+const BLACK: RGBColor = RGBColor(0, 0, 0);
+const ORANGE: RGBColor = RGBColor(230, 159, 0);
+const GREEN: RGBColor = RGBColor(0, 158, 115);
+const BLUE: RGBColor = RGBColor(0, 114, 178);
+const VERMILLION: RGBColor = RGBColor(213, 94, 0);
+const PURPLE: RGBColor = RGBColor(204, 121, 167);
+
+const GREY: RGBColor = RGBColor(95, 95, 95);
+const GRID: RGBColor = RGBColor(225, 225, 225);

@@ -1,0 +1,116 @@
+//! Studies: what a user asks of the pipeline, answered for one net or many.
+
+mod band;
+mod check;
+mod verdict;
+
+pub use band::scan_band_hz;
+pub use check::{CheckSetup, check_net};
+pub use verdict::{
+    INSTRUMENT_SIGMA_DB, MODEL_SIGMA_DB, Verdict, chance_of_failing, total_sigma_db,
+};
+
+use crate::ringing::{MarchReport, SettledWaveform};
+
+/// Every output carries this.
+pub const NOTICE: &str = "pre-compliance estimate, not a compliance test";
+
+/// What `check` finds out about one net.
+#[derive(Debug, Clone)]
+pub struct NetResult {
+    /// The net's name.
+    pub name: String,
+    /// Its clock.
+    pub clock_hz: f64,
+    /// What the worst margin means.
+    pub verdict: Verdict,
+    /// Chance of failing, 0 to 1; `None` where nothing could be judged.
+    pub chance_of_failing: Option<f64>,
+    /// The smallest margin over limits, distances and harmonics; `None` where no limit covers a harmonic or nothing radiates.
+    pub worst: Option<Worst>,
+    /// Every harmonic in range, by rising frequency.
+    pub harmonics: Vec<Harmonic>,
+    /// What the waveform does to the parts.
+    pub signal: Signal,
+    /// How the waveform was reached.
+    pub march: MarchReport,
+    /// One settled period.
+    pub waveform: SettledWaveform,
+    /// What the user should know, in plain sentences.
+    pub warnings: Vec<String>,
+}
+
+/// The reading with the smallest margin.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Worst {
+    /// Title of the limit.
+    pub limit: String,
+    /// Number of the harmonic.
+    pub harmonic: usize,
+    /// Its frequency.
+    pub frequency_hz: f64,
+    /// Distance of the antenna.
+    pub distance_m: f64,
+    /// The estimate.
+    pub field_dbuv_per_m: f64,
+    /// The limit there.
+    pub limit_dbuv_per_m: f64,
+    /// Limit less estimate.
+    pub margin_db: f64,
+}
+
+/// One harmonic of the settled waveform and what it radiates. All levels are rms.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Harmonic {
+    /// Its number; 1 is the clock.
+    pub number: usize,
+    /// Its frequency.
+    pub frequency_hz: f64,
+    /// Current out of the driver.
+    pub driver_current_a: f64,
+    /// Voltage at each receiver, in the order of [`Signal::receivers`].
+    pub receiver_voltage_v: Vec<f64>,
+    /// The field at each distance asked for.
+    pub fields: Vec<FieldReading>,
+}
+
+/// The field of one harmonic at one distance. A field of zero has no level and is `None`.
+#[derive(Debug, Clone, PartialEq)]
+pub struct FieldReading {
+    /// Distance of the antenna.
+    pub distance_m: f64,
+    /// The estimate; `None` where no part of the net radiates.
+    pub field_dbuv_per_m: Option<f64>,
+    /// The plain loop-area figure; `None` where the loop has no area.
+    pub loop_area_dbuv_per_m: Option<f64>,
+    /// What the cables add; `None` where they are not in the figure.
+    pub cable_dbuv_per_m: Option<f64>,
+}
+
+/// What the waveform does to the driver and the receivers. All figures are instantaneous.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Signal {
+    /// Largest current out of or into the driver.
+    pub driver_peak_current_a: f64,
+    /// Every receiver of the net, in the order of the path.
+    pub receivers: Vec<ReceiverSignal>,
+}
+
+/// What the waveform does at one receiver.
+#[derive(Debug, Clone, PartialEq)]
+pub struct ReceiverSignal {
+    /// The receiver's name.
+    pub name: String,
+    /// Highest voltage.
+    pub maximum_v: f64,
+    /// Lowest voltage.
+    pub minimum_v: f64,
+    /// Highest voltage over the settled high level, zero or more.
+    pub overshoot_v: f64,
+    /// Settled low level over the lowest voltage, zero or more.
+    pub undershoot_v: f64,
+    /// Peak current in the clamp to 0 V; `None` without one.
+    pub low_clamp_peak_a: Option<f64>,
+    /// Peak current in the clamp to the supply; `None` without one.
+    pub high_clamp_peak_a: Option<f64>,
+}
