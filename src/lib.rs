@@ -5,7 +5,7 @@
 //!
 //! 1. [`text`]: quantities with units, and files that say where they are wrong.
 //! 2. [`board`]: the board as the user describes it.
-//! 3. [`line`]: impedance and delay of its traces.
+//! 3. [`mod@line`]: impedance and delay of its traces.
 //! 4. [`ringing`]: one settled period of the waves on a net, in the time domain.
 //! 5. [`spectrum`]: the harmonics of that period, as rms phasors.
 //! 6. [`radiation`]: the field they make at the antenna.

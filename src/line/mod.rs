@@ -1,16 +1,19 @@
 //! Lines: what a trace's cross-section makes of it as a transmission line.
 
+mod loss;
 mod microstrip;
 mod stripline;
 
+pub use loss::Loss;
 pub use microstrip::microstrip;
 pub use stripline::stripline;
 
 use crate::LIGHT_SPEED_M_PER_S;
 use crate::board::{DirectLine, Structure, Trace};
+use num_complex::Complex64;
 use thiserror::Error;
 
-/// Impedance and speed of a uniform lossless line.
+/// Impedance and speed of a uniform line without its loss.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct CrossSection {
     /// Characteristic impedance.
@@ -34,6 +37,17 @@ pub struct Line {
     pub permittivity: f64,
     /// Its route on the plane; empty where the file does not say.
     pub points_m: Vec<[f64; 2]>,
+    /// Its loss; `None` for a lossless line.
+    pub loss: Option<Loss>,
+}
+
+/// What a line is to its waves at one frequency.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct WaveOnLine {
+    /// Propagation over the whole length: attenuation in neper and, imaginary, phase in radians.
+    pub propagation: Complex64,
+    /// Characteristic impedance.
+    pub impedance_ohm: Complex64,
 }
 
 /// Where a line's conductor lies, seen from outside the board.
@@ -49,6 +63,24 @@ pub enum Place {
 }
 
 impl Line {
+    /// The waves at an angular frequency, without the resistance to direct current, which the march takes
+    /// as lumped at the ends.
+    pub fn wave_at(&self, omega: f64) -> WaveOnLine {
+        match &self.loss {
+            None => WaveOnLine {
+                propagation: Complex64::new(0.0, omega * self.delay_s),
+                impedance_ohm: self.impedance_ohm.into(),
+            },
+            Some(loss) => {
+                let (series, shunt) = (loss.series_ohm_per_m(omega), loss.shunt_s_per_m(omega));
+                WaveOnLine {
+                    propagation: self.length_m * (series * shunt).sqrt(),
+                    impedance_ohm: (series / shunt).sqrt(),
+                }
+            }
+        }
+    }
+
     /// Capacitance per length; zero for a line without length.
     pub fn capacitance_f_per_m(&self) -> f64 {
         if self.length_m > 0.0 {
@@ -119,6 +151,7 @@ pub fn line_of_trace(trace: &Trace) -> (Line, Vec<LineWarning>) {
         place,
         permittivity: er,
         points_m: trace.points_m.clone(),
+        loss: Some(Loss::of(trace, &section)),
     };
     (line, warnings)
 }
@@ -134,6 +167,7 @@ pub fn line_of_direct(direct: &DirectLine) -> Line {
         },
         permittivity: direct.permittivity,
         points_m: direct.points_m.clone(),
+        loss: None,
     }
 }
 

@@ -30,6 +30,42 @@ struct Moments {
     charges: Complex64,
 }
 
+/// A segment with all that does not depend on the direction.
+struct Traced<'a> {
+    lit: &'a LitSegment<'a>,
+    /// k L / 2
+    half_phase: f64,
+    /// Propagation over half the length, and its hyperbolic cosine and sine.
+    half: Complex64,
+    cosh: Complex64,
+    sinh: Complex64,
+    loop_scale: Complex64,
+    charge_scale: Complex64,
+}
+
+impl<'a> Traced<'a> {
+    fn new(frequency_hz: f64, lit: &'a LitSegment<'a>) -> Self {
+        let k = TAU * frequency_hz / LIGHT_SPEED_M_PER_S;
+        let segment = lit.segment;
+        let half = lit.propagation_per_m * (segment.length_m / 2.0);
+        let grown = half.exp();
+        let faded = 1.0 / grown;
+        let common = faded * (segment.length_m * segment.height_m);
+        // Charge per length is the shunt admittance, propagation / impedance, times V over j omega.
+        let admittance_s_per_m = lit.propagation_per_m / lit.impedance_ohm;
+        Self {
+            lit,
+            half_phase: k * segment.length_m / 2.0,
+            half,
+            cosh: (grown + faded) / 2.0,
+            sinh: (grown - faded) / 2.0,
+            loop_scale: common * k / lit.impedance_ohm,
+            charge_scale: common * admittance_s_per_m * Complex64::new(0.0, -1.0)
+                / segment.permittivity,
+        }
+    }
+}
+
 impl Antenna for LargePlane {
     fn strongest_v(&self, frequency_hz: f64, segments: &[LitSegment]) -> f64 {
         let squared = match positions_on_one_line(segments) {
@@ -47,51 +83,71 @@ fn scale_ohm_per_m(frequency_hz: f64) -> f64 {
 
 /// The two components of the far field towards a direction, (theta, phi) in radians from the vertical
 /// and from x, times the distance; volts.
-pub(super) fn field_toward(
+pub fn field_toward(
     frequency_hz: f64,
     segments: &[LitSegment],
     theta: f64,
     phi: f64,
 ) -> [Complex64; 2] {
+    let traced: Vec<Traced> = segments
+        .iter()
+        .map(|lit| Traced::new(frequency_hz, lit))
+        .collect();
+    toward(frequency_hz, &traced, theta, phi)
+        .map(|component| scale_ohm_per_m(frequency_hz) * component)
+}
+
+/// The same without its scale.
+fn toward(frequency_hz: f64, segments: &[Traced], theta: f64, phi: f64) -> [Complex64; 2] {
     let k = TAU * frequency_hz / LIGHT_SPEED_M_PER_S;
     let (sin_theta, cos_theta) = theta.sin_cos();
     let (sin_phi, cos_phi) = phi.sin_cos();
     let mut field = [Complex64::ZERO; 2];
-    for lit in segments {
-        let [dx, dy] = lit.segment.direction;
+    for traced in segments {
+        let segment = traced.lit.segment;
+        let [dx, dy] = segment.direction;
         let along = cos_phi * dx + sin_phi * dy;
         let across = sin_phi * dx - cos_phi * dy;
-        let [x, y] = lit.segment.start_m;
+        let [x, y] = segment.start_m;
         let start = Complex64::cis(k * sin_theta * (cos_phi * x + sin_phi * y));
-        let moments = moments(frequency_hz, lit, sin_theta * along);
+        let moments = traced.moments(sin_theta * along);
         field[0] += start * (along * moments.loops - sin_theta * moments.charges);
         field[1] -= start * cos_theta * across * moments.loops;
     }
-    field.map(|component| scale_ohm_per_m(frequency_hz) * component)
+    field
 }
 
-/// Moments of one segment, its start as the phase reference.
-fn moments(frequency_hz: f64, lit: &LitSegment, u: f64) -> Moments {
-    let omega = TAU * frequency_hz;
-    let k = omega / LIGHT_SPEED_M_PER_S;
-    let segment = lit.segment;
-    let half_m = segment.length_m / 2.0;
-    // Int_0^L e^{jqx} dx = L e^{jqL/2} sin(qL/2) / (qL/2)
-    let travel = Complex64::cis(k * u * half_m) * segment.length_m;
-    let setback = Complex64::cis(-lit.beta_rad_per_m * half_m);
-    let outward = lit.outward_v * sinc((k * u - lit.beta_rad_per_m) * half_m);
-    let inward = lit.inward_v * sinc((k * u + lit.beta_rad_per_m) * half_m);
-    let common = travel * setback * segment.height_m;
-    Moments {
-        loops: common * (outward - inward) * (k / segment.impedance_ohm),
-        charges: common
-            * (outward + inward)
-            * (omega * segment.capacitance_f_per_m() / segment.permittivity),
+impl Traced<'_> {
+    /// Moments of the segment, its start as the phase reference, towards a direction `u` along it.
+    fn moments(&self, u: f64) -> Moments {
+        // Int_0^L e^{zx} dx = L e^{zL/2} sinh(zL/2) / (zL/2), with z = jku -+ propagation
+        let turn = self.half_phase * u;
+        let (sin, cos) = turn.sin_cos();
+        let (even, odd) = (Complex64::new(0.0, sin) * self.cosh, cos * self.sinh);
+        let outward = sinhc(
+            even - odd,
+            Complex64::new(-self.half.re, turn - self.half.im),
+        );
+        let inward = sinhc(
+            even + odd,
+            Complex64::new(self.half.re, turn + self.half.im),
+        );
+        let (outward, inward) = (self.lit.outward_v * outward, self.lit.inward_v * inward);
+        let travel = Complex64::new(cos, sin);
+        Moments {
+            loops: travel * self.loop_scale * (outward - inward),
+            charges: travel * self.charge_scale * (outward + inward),
+        }
     }
 }
 
-fn sinc(x: f64) -> f64 {
-    if x.abs() < 1e-6 { 1.0 } else { x.sin() / x }
+/// sinh(z) / z where sinh(z) is known.
+fn sinhc(sinh: Complex64, z: Complex64) -> Complex64 {
+    if z.norm_sqr() < 1e-8 {
+        1.0 + z * z / 6.0
+    } else {
+        sinh / z
+    }
 }
 
 /// Where the segments start on the line they all lie on, in its direction, if there is one.
@@ -125,19 +181,18 @@ fn strongest_of_straight(frequency_hz: f64, segments: &[LitSegment], positions_m
         .zip(positions_m)
         .map(|(lit, start_m)| start_m + lit.segment.length_m)
         .fold(0.0, f64::max);
+    let traced: Vec<Traced> = segments
+        .iter()
+        .map(|lit| Traced::new(frequency_hz, lit))
+        .collect();
     let squared = |u: f64| {
-        let sum =
-            segments
-                .iter()
-                .zip(positions_m)
-                .fold(Moments::default(), |sum, (lit, position_m)| {
-                    let start = Complex64::cis(k * u * position_m);
-                    let Moments { loops, charges } = moments(frequency_hz, lit, u);
-                    Moments {
-                        loops: sum.loops + start * loops,
-                        charges: sum.charges + start * charges,
-                    }
-                });
+        let mut sum = Moments::default();
+        for (traced, position_m) in traced.iter().zip(positions_m) {
+            let start = Complex64::cis(k * u * position_m);
+            let Moments { loops, charges } = traced.moments(u);
+            sum.loops += start * loops;
+            sum.charges += start * charges;
+        }
         let along_plane = (u * sum.loops - sum.charges).norm_sqr();
         along_plane.max((sum.loops - u * sum.charges).norm_sqr())
     };
@@ -164,10 +219,13 @@ fn strongest_of_any(frequency_hz: f64, segments: &[LitSegment]) -> f64 {
             extent_m = extent_m.max(apart_m + a.segment.length_m.max(b.segment.length_m));
         }
     }
-    let scale = scale_ohm_per_m(frequency_hz);
+    let traced: Vec<Traced> = segments
+        .iter()
+        .map(|lit| Traced::new(frequency_hz, lit))
+        .collect();
     let squared = |theta: f64, phi: f64| {
-        let [e_theta, e_phi] = field_toward(frequency_hz, segments, theta, phi);
-        (e_theta.norm_sqr() + e_phi.norm_sqr()) / (scale * scale)
+        let [e_theta, e_phi] = toward(frequency_hz, &traced, theta, phi);
+        e_theta.norm_sqr() + e_phi.norm_sqr()
     };
     // Fine against the pattern's lobes, about 1 / (k extent) wide.
     let quarter_steps = 12 + (k * extent_m * 3.0) as usize;

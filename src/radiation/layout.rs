@@ -34,17 +34,6 @@ pub struct Segment {
     pub height_m: f64,
     /// Relative permittivity of what lies under it.
     pub permittivity: f64,
-    /// The line's impedance.
-    pub impedance_ohm: f64,
-    /// The line's flight time per length.
-    pub delay_s_per_m: f64,
-}
-
-impl Segment {
-    /// Capacitance per length.
-    pub fn capacitance_f_per_m(&self) -> f64 {
-        self.delay_s_per_m / self.impedance_ohm
-    }
 }
 
 /// Where a line ends, for the one that continues it.
@@ -113,8 +102,6 @@ impl Layout {
                         from_far_m: (line.length_m - from_near_m - length_m).max(0.0),
                         height_m,
                         permittivity: line.permittivity,
-                        impedance_ohm: line.impedance_ohm,
-                        delay_s_per_m: line.delay_s / line.length_m,
                     });
                 }
                 from_near_m += length_m;

@@ -11,12 +11,14 @@ mod layout;
 mod loop_area;
 mod site;
 
-pub use large_plane::LargePlane;
+pub use large_plane::{LargePlane, field_toward};
 pub use layout::{Layout, Segment};
 pub use loop_area::loop_area_v_per_m;
 pub use site::{FLOOR_ABSORBED_ABOVE_HZ, Site, TABLE_HEIGHT_M, two_ray_factors};
 
 use crate::LIGHT_SPEED_M_PER_S;
+use crate::line::WaveOnLine;
+use crate::ringing::Network;
 use crate::spectrum::Spectrum;
 use num_complex::Complex64;
 use std::f64::consts::TAU;
@@ -24,10 +26,12 @@ use std::f64::consts::TAU;
 /// A straight piece of a line at one harmonic, with the two waves on it.
 #[derive(Debug, Clone, Copy)]
 pub struct LitSegment<'a> {
-    /// Where it lies and what it is made of.
+    /// Where it lies.
     pub segment: &'a Segment,
-    /// Phase constant of its waves.
-    pub beta_rad_per_m: f64,
+    /// Attenuation in neper and, imaginary, phase in radians per length.
+    pub propagation_per_m: Complex64,
+    /// Characteristic impedance.
+    pub impedance_ohm: Complex64,
     /// Outward wave at the segment's start, rms.
     pub outward_v: Complex64,
     /// Inward wave at the segment's end, rms.
@@ -42,29 +46,45 @@ pub trait Antenna {
 
 /// The largest far field of each harmonic over all directions in free space, times the distance;
 /// volts rms.
-pub fn strongest_v(antenna: &impl Antenna, layout: &Layout, spectrum: &Spectrum) -> Vec<f64> {
+pub fn strongest_v(
+    antenna: &impl Antenna,
+    network: &Network,
+    layout: &Layout,
+    spectrum: &Spectrum,
+) -> Vec<f64> {
     (0..spectrum.len())
         .map(|place| {
             let frequency_hz = spectrum.frequency_hz(place);
-            let segments: Vec<LitSegment> = layout
-                .segments
+            let waves: Vec<WaveOnLine> = network
+                .spans
                 .iter()
-                .map(|segment| {
-                    let beta_rad_per_m = TAU * frequency_hz * segment.delay_s_per_m;
-                    let travelled = |length_m: f64| Complex64::cis(-beta_rad_per_m * length_m);
-                    LitSegment {
-                        segment,
-                        beta_rad_per_m,
-                        outward_v: spectrum.outward_v[[segment.line, place]]
-                            * travelled(segment.from_near_m),
-                        inward_v: spectrum.inward_v[[segment.line, place]]
-                            * travelled(segment.from_far_m),
-                    }
-                })
+                .map(|span| span.line.wave_at(TAU * frequency_hz))
                 .collect();
+            let lit = |segment| lit(segment, network, spectrum, place, &waves);
+            let segments: Vec<LitSegment> = layout.segments.iter().map(lit).collect();
             antenna.strongest_v(frequency_hz, &segments)
         })
         .collect()
+}
+
+fn lit<'a>(
+    segment: &'a Segment,
+    network: &Network,
+    spectrum: &Spectrum,
+    place: usize,
+    waves: &[WaveOnLine],
+) -> LitSegment<'a> {
+    let line = segment.line;
+    let wave = waves[line];
+    let propagation_per_m = wave.propagation / network.spans[line].line.length_m;
+    let travelled = |length_m: f64| (-propagation_per_m * length_m).exp();
+    LitSegment {
+        segment,
+        propagation_per_m,
+        impedance_ohm: wave.impedance_ohm,
+        outward_v: spectrum.outward_v[[line, place]] * travelled(segment.from_near_m),
+        inward_v: spectrum.inward_v[[line, place]] * travelled(segment.from_far_m),
+    }
 }
 
 /// What the near field adds to the far field at a distance: sqrt(1 + 1 / (k r)^2), as in the electric

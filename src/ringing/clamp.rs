@@ -44,6 +44,11 @@ impl Clamps {
         self.low.is_some() || self.high.is_some()
     }
 
+    /// The rail of the upper clamp; zero without one.
+    pub fn supply_v(&self) -> f64 {
+        self.high.map_or(0.0, |(_, supply_v)| supply_v)
+    }
+
     /// Current in the clamp to 0 V, out of the rail into the input.
     pub fn low_a(&self, input_v: f64) -> Option<f64> {
         self.low.map(|junction| junction.current(-input_v).0)

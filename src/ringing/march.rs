@@ -1,8 +1,8 @@
 //! The march: step by step until a whole period repeats.
 
 use super::cluster::{Cluster, Load};
-use super::delay::Delay;
-use super::network::{Branch, BranchEnd, DRIVER_NODE, Network};
+use super::network::{Branch, BranchEnd, DRIVER_NODE, Network, Span};
+use super::travelling::{Model, TravellingLine};
 use ndarray::Array2;
 
 /// Largest share of the swing by which the settled waveform may still be off.
@@ -67,12 +67,13 @@ pub struct MarchReport {
     pub settled: bool,
 }
 
-/// Marches a net, in `steps_per_period` even steps, until a whole period repeats.
+/// Marches a net, in `steps_per_period` even steps, until a whole period repeats. Losses are fitted up to the top
+/// frequency.
 ///
 /// A net that does not settle within the longest march is returned as it stands, with the residual
 /// in its report.
-pub fn settle(network: &Network, steps_per_period: usize) -> Settled {
-    let mut march = March::new(network, steps_per_period);
+pub fn settle(network: &Network, steps_per_period: usize, top_frequency_hz: f64) -> Settled {
+    let mut march = March::new(network, steps_per_period, top_frequency_hz);
     let swing_v = network.source.swing_v();
     let most_periods = (MOST_STEPS / steps_per_period).max(4);
     let mut last_change = f64::INFINITY;
@@ -112,7 +113,7 @@ struct March<'a> {
 /// A line on the march.
 enum LineState {
     /// Two delayed waves.
-    Waves(TravellingWaves),
+    Waves(Box<TravellingLine>),
     /// Shorter than the delays can be: one pi section of lumped parts, seen in its middle.
     Lumped {
         near: usize,
@@ -123,18 +124,8 @@ enum LineState {
     },
 }
 
-struct TravellingWaves {
-    near: usize,
-    far: usize,
-    conductance_s: f64,
-    outward: Delay,
-    inward: Delay,
-    /// The waves that arrive now, at the near and the far end.
-    arrived: [f64; 2],
-}
-
 impl<'a> March<'a> {
-    fn new(network: &'a Network, steps: usize) -> Self {
+    fn new(network: &'a Network, steps: usize, top_frequency_hz: f64) -> Self {
         let step_s = network.period_s / steps as f64;
         let source = &network.source;
         let low_v = source.low_v();
@@ -142,30 +133,25 @@ impl<'a> March<'a> {
         let mut lines = Vec::with_capacity(network.spans.len());
         for span in &network.spans {
             let (near, far) = (span.near, span.far);
-            let impedance_ohm = span.line.impedance_ohm;
-            let delay_steps = span.line.delay_s / step_s;
-            lines.push(if delay_steps >= Delay::SHORTEST {
-                let wave = Delay::new(delay_steps, steps, low_v / 2.0);
-                LineState::Waves(TravellingWaves {
-                    near,
-                    far,
-                    conductance_s: 1.0 / impedance_ohm,
-                    outward: wave.clone(),
-                    inward: wave,
-                    arrived: [0.0; 2],
-                })
-            } else {
-                let branch = branches.len();
-                branches.extend(pi_section(near, far, impedance_ohm, span.line.delay_s));
-                let record = [vec![0.0; steps], vec![0.0; steps]];
-                LineState::Lumped {
-                    near,
-                    far,
-                    branch,
-                    impedance_ohm,
-                    record,
-                }
-            });
+            let model = Model::of(&span.line, 1.0 / network.period_s, top_frequency_hz);
+            lines.push(
+                match TravellingLine::new([near, far], &model, step_s, steps, low_v) {
+                    Some(line) => LineState::Waves(Box::new(line)),
+                    None => {
+                        let branch = branches.len();
+                        branches.extend(pi_section(span, top_frequency_hz));
+                        let impedance_ohm = span.line.impedance_ohm;
+                        let record = [vec![0.0; steps], vec![0.0; steps]];
+                        LineState::Lumped {
+                            near,
+                            far,
+                            branch,
+                            impedance_ohm,
+                            record,
+                        }
+                    }
+                },
+            );
         }
         let branches: Vec<Companion> = branches
             .iter()
@@ -207,8 +193,8 @@ impl<'a> March<'a> {
     fn one_step(&mut self, step: usize) -> f64 {
         self.injected_a.fill(0.0);
         for line in &mut self.lines {
-            if let LineState::Waves(waves) = line {
-                waves.arrive(&mut self.injected_a);
+            if let LineState::Waves(line) = line {
+                line.arrive(&mut self.injected_a);
             }
         }
         for branch in &mut self.branches {
@@ -255,23 +241,11 @@ impl<'a> March<'a> {
     }
 }
 
-impl TravellingWaves {
-    fn arrive(&mut self, injected_a: &mut [f64]) {
-        self.arrived = [self.inward.arriving(), self.outward.arriving()];
-        injected_a[self.near] += 2.0 * self.conductance_s * self.arrived[0];
-        injected_a[self.far] += 2.0 * self.conductance_s * self.arrived[1];
-    }
-}
-
 impl LineState {
     /// Sends the waves that leave now; returns the largest change since one period ago.
     fn leave(&mut self, step: usize, voltage_v: &[f64], branches: &[Companion]) -> f64 {
         match self {
-            Self::Waves(waves) => {
-                let outward = waves.outward.send(voltage_v[waves.near] - waves.arrived[0]);
-                let inward = waves.inward.send(voltage_v[waves.far] - waves.arrived[1]);
-                outward.abs().max(inward.abs())
-            }
+            Self::Waves(line) => line.leave(voltage_v),
             Self::Lumped {
                 near,
                 far,
@@ -294,11 +268,14 @@ impl LineState {
 
     fn into_record(self) -> WaveRecord {
         match self {
-            Self::Waves(waves) => WaveRecord {
-                outward_v: waves.outward.last_period(),
-                inward_v: waves.inward.last_period(),
-                taken: Taken::AtStart,
-            },
+            Self::Waves(line) => {
+                let [outward_v, inward_v] = line.last_period();
+                WaveRecord {
+                    outward_v,
+                    inward_v,
+                    taken: Taken::AtStart,
+                }
+            }
             Self::Lumped {
                 record: [outward_v, inward_v],
                 ..
@@ -311,23 +288,31 @@ impl LineState {
     }
 }
 
-/// A line too short for its waves to be told apart: its inductance between halves of its capacitance.
-fn pi_section(near: usize, far: usize, impedance_ohm: f64, delay_s: f64) -> [Branch; 3] {
+/// A line too short for its waves to be told apart: its inductance, with the resistance of the middle of the
+/// band, between halves of its capacitance.
+fn pi_section(span: &Span, top_frequency_hz: f64) -> [Branch; 3] {
+    /// The middle of a band that starts at 30 MHz.
+    const OF_TOP: f64 = 0.2;
+    let line = &span.line;
+    let resistance_ohm = line.loss.as_ref().map_or(0.0, |loss| {
+        let skin = loss.series_ohm_per_m(std::f64::consts::TAU * OF_TOP * top_frequency_hz);
+        (loss.dc_ohm_per_m + skin.re) * line.length_m
+    });
     let half = |from| Branch {
         from,
         to: BranchEnd::RailV(0.0),
         resistance_ohm: 0.0,
         inductance_h: 0.0,
-        capacitance_f: Some(delay_s / impedance_ohm / 2.0),
+        capacitance_f: Some(line.delay_s / line.impedance_ohm / 2.0),
     };
     let inductance = Branch {
-        from: near,
-        to: BranchEnd::Node(far),
-        resistance_ohm: 0.0,
-        inductance_h: impedance_ohm * delay_s,
+        from: span.near,
+        to: BranchEnd::Node(span.far),
+        resistance_ohm,
+        inductance_h: line.impedance_ohm * line.delay_s,
         capacitance_f: None,
     };
-    [inductance, half(near), half(far)]
+    [inductance, half(span.near), half(span.far)]
 }
 
 /// The trapezoidal companion of a branch: a conductance with a voltage source that carries its past.
@@ -405,9 +390,10 @@ fn clusters(
     let mut conductance = Array2::<f64>::zeros((count, count));
     conductance[[DRIVER_NODE, DRIVER_NODE]] += driver_s;
     for line in lines {
-        if let LineState::Waves(waves) = line {
-            conductance[[waves.near, waves.near]] += waves.conductance_s;
-            conductance[[waves.far, waves.far]] += waves.conductance_s;
+        if let LineState::Waves(line) = line {
+            for (node, conductance_s) in line.conductances_s() {
+                conductance[[node, node]] += conductance_s;
+            }
         }
     }
     // Every node starts in a cluster of its own; a branch between two makes them one.

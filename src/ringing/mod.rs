@@ -9,11 +9,13 @@
 mod clamp;
 mod cluster;
 mod delay;
+mod filter;
 mod march;
 mod network;
 mod rest;
 mod source;
 mod steps;
+mod travelling;
 
 pub use clamp::Clamps;
 pub use march::{MarchReport, Settled, SettledWaveform, Taken, WaveRecord, settle};

@@ -73,6 +73,12 @@ pub struct Input {
     pub node: usize,
     /// Its clamps.
     pub clamps: Clamps,
+    /// Largest current they are rated for, where the file says.
+    pub clamp_rating_a: Option<f64>,
+    /// Highest level that is surely read as low, where the file says.
+    pub low_threshold_v: Option<f64>,
+    /// Lowest level that is surely read as high, where the file says.
+    pub high_threshold_v: Option<f64>,
 }
 
 impl Network {
@@ -190,6 +196,9 @@ impl Network {
             name: name.to_owned(),
             node,
             clamps: Clamps::of(part),
+            clamp_rating_a: part.clamp_rating_a,
+            low_threshold_v: part.low_threshold_v,
+            high_threshold_v: part.high_threshold_v,
         });
     }
 

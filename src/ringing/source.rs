@@ -41,6 +41,16 @@ impl Source {
         self.high_v - self.low_v
     }
 
+    /// When the rising and the falling edge start, within the period.
+    pub fn starts_s(&self) -> [f64; 2] {
+        [0.0, self.fall_start_s]
+    }
+
+    /// When the rising and the falling edge are half over, within the period.
+    pub fn middles_s(&self) -> [f64; 2] {
+        [self.rise_s / 2.0, self.fall_start_s + self.fall_s / 2.0]
+    }
+
     /// Whether the resistance is the same in both states.
     pub fn is_steady(&self) -> bool {
         self.low_resistance_ohm == self.high_resistance_ohm

@@ -5,7 +5,7 @@ use std::collections::BTreeMap;
 use serde::Serialize;
 
 use super::{CheckReport, NOTICE, words};
-use crate::study::{Harmonic, NetResult, Signal};
+use crate::study::{ClampSignal, Harmonic, NetResult, ReceiverSignal, Signal};
 
 /// The whole report as one JSON object; a number that is not finite is `null`.
 pub fn check_json(report: &CheckReport) -> String {
@@ -106,17 +106,27 @@ struct FieldEntry {
 #[derive(Serialize)]
 struct SignalEntry<'a> {
     driver_peak_current_a: f64,
+    driver_rms_current_a: f64,
     receivers: Vec<ReceiverEntry<'a>>,
 }
 
 #[derive(Serialize)]
 struct ReceiverEntry<'a> {
     name: &'a str,
+    rest_low_v: f64,
+    rest_high_v: f64,
     maximum_v: f64,
     minimum_v: f64,
     overshoot_v: f64,
     undershoot_v: f64,
+    ringback_v: f64,
+    extra_crossings: usize,
+    reaches_thresholds: Option<bool>,
+    settling_s: Option<f64>,
+    flight_s: Option<f64>,
     clamp_peak_current_a: ClampEntry,
+    clamp_charge_c: ClampEntry,
+    clamp_power_w: f64,
 }
 
 #[derive(Serialize)]
@@ -177,21 +187,35 @@ fn harmonic_entry<'a>(harmonic: &Harmonic, signal: &'a Signal) -> HarmonicEntry<
 fn signal_entry(signal: &Signal) -> SignalEntry<'_> {
     SignalEntry {
         driver_peak_current_a: signal.driver_peak_current_a,
+        driver_rms_current_a: signal.driver_rms_current_a,
         receivers: signal
             .receivers
             .iter()
             .map(|receiver| ReceiverEntry {
                 name: &receiver.name,
+                rest_low_v: receiver.rest_low_v,
+                rest_high_v: receiver.rest_high_v,
                 maximum_v: receiver.maximum_v,
                 minimum_v: receiver.minimum_v,
                 overshoot_v: receiver.overshoot_v,
                 undershoot_v: receiver.undershoot_v,
-                clamp_peak_current_a: ClampEntry {
-                    low: receiver.low_clamp_peak_a,
-                    high: receiver.high_clamp_peak_a,
-                },
+                ringback_v: receiver.ringback_v,
+                extra_crossings: receiver.extra_crossings,
+                reaches_thresholds: receiver.reaches_thresholds,
+                settling_s: receiver.settling_s,
+                flight_s: receiver.flight_s,
+                clamp_peak_current_a: clamp_entry(receiver, |clamp| clamp.peak_a),
+                clamp_charge_c: clamp_entry(receiver, |clamp| clamp.charge_c),
+                clamp_power_w: receiver.clamp_power_w(),
             })
             .collect(),
+    }
+}
+
+fn clamp_entry(receiver: &ReceiverSignal, figure: fn(ClampSignal) -> f64) -> ClampEntry {
+    ClampEntry {
+        low: receiver.low_clamp.map(figure),
+        high: receiver.high_clamp.map(figure),
     }
 }
 
@@ -257,17 +281,20 @@ mod tests {
             ]
         );
         let receiver = &net["signal"]["receivers"][0];
-        assert_eq!(
-            keys(receiver),
-            [
-                "clamp_peak_current_a",
-                "maximum_v",
-                "minimum_v",
-                "name",
-                "overshoot_v",
-                "undershoot_v"
-            ]
-        );
+        for key in [
+            "clamp_peak_current_a",
+            "clamp_power_w",
+            "extra_crossings",
+            "maximum_v",
+            "minimum_v",
+            "name",
+            "overshoot_v",
+            "ringback_v",
+            "settling_s",
+            "undershoot_v",
+        ] {
+            assert!(keys(receiver).contains(&key), "{key}");
+        }
         assert_eq!(keys(&receiver["clamp_peak_current_a"]), ["high", "low"]);
     }
 

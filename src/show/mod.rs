@@ -3,6 +3,7 @@
 //! Nothing here prints or opens a file; the front does. Every output carries [`NOTICE`].
 
 mod csv;
+mod findings;
 mod json;
 mod limit_listing;
 mod plot;

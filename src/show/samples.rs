@@ -4,7 +4,9 @@ use crate::board::UnusableNet;
 use crate::limit::{Band, Detector, Limit, LimitAt, limits_at};
 use crate::radiation::Site;
 use crate::ringing::{MarchReport, SettledWaveform};
-use crate::study::{FieldReading, Harmonic, NetResult, ReceiverSignal, Signal, Verdict, Worst};
+use crate::study::{
+    ClampSignal, FieldReading, Harmonic, NetResult, ReceiverSignal, Signal, Verdict, Worst,
+};
 
 use super::CheckReport;
 
@@ -83,6 +85,7 @@ pub(super) fn net(name: &str, clock_hz: f64, harmonics: usize) -> NetResult {
             .collect(),
         signal: Signal {
             driver_peak_current_a: 0.04,
+            driver_rms_current_a: 0.015,
             receivers: vec![receiver("cmos-input")],
         },
         march: MarchReport {
@@ -128,12 +131,24 @@ pub(super) fn add_receiver(net: &mut NetResult, name: &str) {
 fn receiver(name: &str) -> ReceiverSignal {
     ReceiverSignal {
         name: name.into(),
+        rest_low_v: 0.0,
+        rest_high_v: 3.3,
         maximum_v: 4.5,
         minimum_v: -1.2,
         overshoot_v: 1.2,
         undershoot_v: 1.2,
-        low_clamp_peak_a: Some(0.02),
-        high_clamp_peak_a: None,
+        ringback_v: 0.8,
+        extra_crossings: 0,
+        reaches_thresholds: None,
+        settling_s: Some(7.4e-9),
+        flight_s: Some(1.1e-9),
+        low_clamp: Some(ClampSignal {
+            peak_a: 0.02,
+            charge_c: 30e-12,
+            power_w: 1.2e-3,
+        }),
+        high_clamp: None,
+        clamp_rating_a: None,
     }
 }
 

@@ -5,6 +5,7 @@ use std::fmt::Write as _;
 use anstyle::{AnsiColor, Style};
 use comfy_table::{CellAlignment, Table, presets};
 
+use super::findings::findings;
 use super::{CheckReport, LABORATORY, NOTICE, words};
 use crate::limit::LimitAt;
 use crate::study::{NetResult, Verdict};
@@ -42,6 +43,7 @@ pub fn check_table(report: &CheckReport) -> String {
         }
         text.push('\n');
     }
+    push_findings(&mut text, &nets);
     push_unusable(&mut text, report);
     push_warnings(&mut text, report);
     push_foot(&mut text, report);
@@ -126,6 +128,24 @@ fn with_styled_verdict(line: &str, net: &NetResult) -> String {
             format!("{}{}", net.name, rest.replacen(word, &styled, 1))
         }
         None => line.to_string(),
+    }
+}
+
+/// What the ringing does to the parts, where it is worth a word.
+fn push_findings(text: &mut String, nets: &[&NetResult]) {
+    let found: Vec<(&str, Vec<String>)> = nets
+        .iter()
+        .map(|net| (net.name.as_str(), findings(&net.signal)))
+        .filter(|(_, sentences)| !sentences.is_empty())
+        .collect();
+    if found.is_empty() {
+        return;
+    }
+    text.push_str("\nWhat the ringing does to the parts:\n");
+    for (name, sentences) in found {
+        for sentence in sentences {
+            let _ = writeln!(text, "  {name}: {sentence}");
+        }
     }
 }
 

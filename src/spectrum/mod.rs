@@ -86,8 +86,8 @@ pub fn spectrum(network: &Network, settled: &Settled, lowest_hz: f64, top_hz: f6
         if *taken == Taken::InMiddle {
             // Each wave was at its start half a flight time earlier.
             for (place, harmonic) in harmonics.clone().enumerate() {
-                let phase = TAU * harmonic as f64 * clock_hz * span.line.delay_s / 2.0;
-                let earlier = Complex64::cis(phase);
+                let wave = span.line.wave_at(TAU * harmonic as f64 * clock_hz);
+                let earlier = (wave.propagation / 2.0).exp();
                 outward_v[[line, place]] *= earlier;
                 inward_v[[line, place]] *= earlier;
             }

@@ -1,13 +1,14 @@
 //! Will a net likely fail a scan?
 
+use super::signal::signal;
 use super::verdict::{Verdict, chance_of_failing, total_sigma_db};
-use super::{FieldReading, Harmonic, NetResult, ReceiverSignal, Signal, Worst};
+use super::{FieldReading, Harmonic, NetResult, Worst};
 use crate::board::Net;
 use crate::limit::{Limit, LimitAt, limits_at};
 use crate::radiation::{
     LargePlane, Layout, Site, loop_area_v_per_m, near_field_factor, strongest_v,
 };
-use crate::ringing::{Network, Settled, rest_levels_v, settle, steps_per_period};
+use crate::ringing::{Network, Settled, settle, steps_per_period};
 use crate::spectrum::{Spectrum, spectrum};
 
 /// What to measure and against what.
@@ -31,7 +32,7 @@ pub struct CheckSetup {
 pub fn check_net(net: &Net, setup: &CheckSetup) -> NetResult {
     let network = Network::of(net);
     let steps = steps_per_period(&network, setup.top_frequency_hz);
-    let settled = settle(&network, steps);
+    let settled = settle(&network, steps, setup.top_frequency_hz);
     let spectrum = spectrum(
         &network,
         &settled,
@@ -39,7 +40,7 @@ pub fn check_net(net: &Net, setup: &CheckSetup) -> NetResult {
         setup.top_frequency_hz,
     );
     let layout = Layout::of(&network, net.along);
-    let harmonics = harmonics(&spectrum, &layout, setup);
+    let harmonics = harmonics(&network, &layout, &spectrum, setup);
     let worst = worst_reading(&harmonics, setup);
     let chance = worst
         .as_ref()
@@ -59,8 +60,13 @@ pub fn check_net(net: &Net, setup: &CheckSetup) -> NetResult {
 }
 
 /// The harmonics with their fields at every distance.
-fn harmonics(spectrum: &Spectrum, layout: &Layout, setup: &CheckSetup) -> Vec<Harmonic> {
-    let strongest_v = strongest_v(&LargePlane, layout, spectrum);
+fn harmonics(
+    network: &Network,
+    layout: &Layout,
+    spectrum: &Spectrum,
+    setup: &CheckSetup,
+) -> Vec<Harmonic> {
+    let strongest_v = strongest_v(&LargePlane, network, layout, spectrum);
     let area_m2 = layout.loop_area_m2();
     strongest_v
         .into_iter()
@@ -140,40 +146,6 @@ fn worst_reading(harmonics: &[Harmonic], setup: &CheckSetup) -> Option<Worst> {
     worst
 }
 
-/// What the settled waveform does to the driver and the receivers.
-fn signal(network: &Network, settled: &Settled) -> Signal {
-    let highest = |samples: &[f64]| samples.iter().copied().fold(f64::NEG_INFINITY, f64::max);
-    let lowest = |samples: &[f64]| samples.iter().copied().fold(f64::INFINITY, f64::min);
-    let waveform = &settled.waveform;
-    let at_rest = rest_levels_v(network, false)
-        .into_iter()
-        .zip(rest_levels_v(network, true));
-    let receivers = network
-        .inputs
-        .iter()
-        .zip(&waveform.receivers_v)
-        .zip(at_rest)
-        .map(|((input, voltage_v), (low_v, high_v))| {
-            let (maximum_v, minimum_v) = (highest(voltage_v), lowest(voltage_v));
-            ReceiverSignal {
-                name: input.name.clone(),
-                maximum_v,
-                minimum_v,
-                overshoot_v: (maximum_v - high_v).max(0.0),
-                undershoot_v: (low_v - minimum_v).max(0.0),
-                // A clamp's current rises with the voltage over it.
-                low_clamp_peak_a: input.clamps.low_a(minimum_v),
-                high_clamp_peak_a: input.clamps.high_a(maximum_v),
-            }
-        })
-        .collect();
-    let driver_peak_current_a = highest(&waveform.driver_a).max(-lowest(&waveform.driver_a));
-    Signal {
-        driver_peak_current_a,
-        receivers,
-    }
-}
-
 /// What the user should know about the figures of a net.
 fn warnings(
     network: &Network,
@@ -192,6 +164,7 @@ fn warnings(
     if network.inputs.is_empty() {
         warnings.push("has no receiver; its far end is open".into());
     }
+    warnings.extend(electrical_length(network).map(str::to_owned));
     if spectrum.is_empty() {
         warnings.push("has no harmonic in the scanned band".into());
     }
@@ -205,4 +178,26 @@ fn warnings(
         warnings.push("no line has a length and a height, so no field can be estimated".into());
     }
     warnings
+}
+
+/// How long the net is for its edge.
+fn electrical_length(network: &Network) -> Option<&'static str> {
+    // common practice, no source: a trace is short when its edge lasts ten flight times and more, long when
+    // the first reflection is back after the edge is over
+    const SHORT: f64 = 10.0;
+    const LONG: f64 = 2.0;
+    let mut farthest_s = vec![0.0; network.spans.len()];
+    for (number, span) in network.spans.iter().enumerate() {
+        farthest_s[number] =
+            span.line.delay_s + span.after.map_or(0.0, |before| farthest_s[before]);
+    }
+    let flight_s = farthest_s.into_iter().fold(0.0, f64::max);
+    let edge_s = network.source.shortest_edge_s();
+    if flight_s > 0.0 && edge_s > SHORT * flight_s {
+        Some("is short for its edge (over ten flight times): it hardly rings, whatever its ends")
+    } else if edge_s < LONG * flight_s {
+        Some("is long for its edge: the edge is over before the first reflection is back")
+    } else {
+        None
+    }
 }

@@ -2,10 +2,12 @@
 
 mod band;
 mod check;
+mod signal;
 mod verdict;
 
 pub use band::scan_band_hz;
 pub use check::{CheckSetup, check_net};
+pub use signal::{ClampSignal, ReceiverSignal, Signal};
 pub use verdict::{
     INSTRUMENT_SIGMA_DB, MODEL_SIGMA_DB, Verdict, chance_of_failing, total_sigma_db,
 };
@@ -85,32 +87,4 @@ pub struct FieldReading {
     pub loop_area_dbuv_per_m: Option<f64>,
     /// What the cables add; `None` where they are not in the figure.
     pub cable_dbuv_per_m: Option<f64>,
-}
-
-/// What the waveform does to the driver and the receivers. All figures are instantaneous.
-#[derive(Debug, Clone, PartialEq)]
-pub struct Signal {
-    /// Largest current out of or into the driver.
-    pub driver_peak_current_a: f64,
-    /// Every receiver of the net, in the order of the path.
-    pub receivers: Vec<ReceiverSignal>,
-}
-
-/// What the waveform does at one receiver.
-#[derive(Debug, Clone, PartialEq)]
-pub struct ReceiverSignal {
-    /// The receiver's name.
-    pub name: String,
-    /// Highest voltage.
-    pub maximum_v: f64,
-    /// Lowest voltage.
-    pub minimum_v: f64,
-    /// Highest voltage over the settled high level, zero or more.
-    pub overshoot_v: f64,
-    /// Settled low level over the lowest voltage, zero or more.
-    pub undershoot_v: f64,
-    /// Peak current in the clamp to 0 V; `None` without one.
-    pub low_clamp_peak_a: Option<f64>,
-    /// Peak current in the clamp to the supply; `None` without one.
-    pub high_clamp_peak_a: Option<f64>,
 }

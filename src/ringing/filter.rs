@@ -1,0 +1,232 @@
+//! Causal filters: what loss makes of a wave, as a sum of relaxations.
+
+use ndarray::{Array2, ArrayView1};
+use num_complex::Complex64;
+
+/// H(s) = direct + sum of residue / (1 + s / pole) with real poles.
+#[derive(Debug, Clone, PartialEq)]
+pub(super) struct Relaxations {
+    pub(super) direct: f64,
+    /// (pole in rad/s, residue)
+    pub(super) terms: Vec<(f64, f64)>,
+}
+
+/// What a sum of relaxations is to be like.
+pub(super) struct Wanted {
+    /// Its values at the sampled frequencies.
+    pub(super) values: Vec<Complex64>,
+    /// Its value at zero, where that has to be exact.
+    pub(super) at_zero: Option<f64>,
+    /// About what it comes to far above the samples.
+    pub(super) above: f64,
+}
+
+impl Relaxations {
+    /// For each wanted function, the sum with the given poles that comes nearest to it in the sense of least
+    /// squares, and how far off it is (root of the sum of squares). All share the sampled frequencies (rad/s) and
+    /// whether zero is exact.
+    pub(super) fn fit(poles: &[f64], omegas: &[f64], wanted: &[Wanted]) -> Vec<(Self, f64)> {
+        const EXACTLY: f64 = 1e3;
+        let roughly = 1e-2 * (omegas.len() as f64).sqrt();
+        let (columns, rows) = (poles.len() + 1, 2 * omegas.len() + 2);
+        // Rows: real parts, imaginary parts, the value at zero, the value far above.
+        let at_zero = if wanted.iter().any(|w| w.at_zero.is_some()) {
+            EXACTLY
+        } else {
+            0.0
+        };
+        let mut matrix = Array2::zeros((rows, columns));
+        let mut right = Array2::zeros((rows, wanted.len()));
+        for (row, &omega) in omegas.iter().enumerate() {
+            matrix[[row, 0]] = 1.0;
+            for (column, pole) in poles.iter().enumerate() {
+                let term = 1.0 / Complex64::new(1.0, omega / pole);
+                matrix[[row, column + 1]] = term.re;
+                matrix[[omegas.len() + row, column + 1]] = term.im;
+            }
+            for (column, wanted) in wanted.iter().enumerate() {
+                right[[row, column]] = wanted.values[row].re;
+                right[[omegas.len() + row, column]] = wanted.values[row].im;
+            }
+        }
+        matrix.row_mut(rows - 2).fill(at_zero);
+        matrix[[rows - 1, 0]] = roughly;
+        for (column, wanted) in wanted.iter().enumerate() {
+            right[[rows - 2, column]] = at_zero * wanted.at_zero.unwrap_or(0.0);
+            right[[rows - 1, column]] = roughly * wanted.above;
+        }
+        let (solution, errors) = least_squares(matrix, right);
+        let sums = solution.columns().into_iter().map(|column| Self {
+            direct: column[0],
+            terms: poles
+                .iter()
+                .copied()
+                .zip(column.iter().skip(1).copied())
+                .collect(),
+        });
+        sums.zip(errors).collect()
+    }
+
+    /// Its value at j omega.
+    #[cfg(test)]
+    pub(super) fn at(&self, omega: f64) -> Complex64 {
+        self.terms
+            .iter()
+            .fold(Complex64::from(self.direct), |sum, (pole, residue)| {
+                sum + residue / Complex64::new(1.0, omega / pole)
+            })
+    }
+}
+
+/// Relaxations are marched so many at a time: what a processor does at once.
+const LANES: usize = 4;
+
+/// A sum of relaxations marched step by step, its input taken as straight between steps.
+#[derive(Debug, Clone)]
+pub(super) struct Filter {
+    /// Share of the present input in the present output.
+    direct: f64,
+    decay: Vec<[f64; LANES]>,
+    gain: Vec<[f64; LANES]>,
+    /// What each relaxation's past will leave in the next output.
+    state: Vec<[f64; LANES]>,
+    past: f64,
+}
+
+impl Filter {
+    /// A filter that has always had the input `start`.
+    pub(super) fn new(relaxations: &Relaxations, step_s: f64, start: f64) -> Self {
+        let blocks = relaxations.terms.len().div_ceil(LANES);
+        let mut filter = Self {
+            direct: relaxations.direct,
+            decay: vec![[0.0; LANES]; blocks],
+            gain: vec![[0.0; LANES]; blocks],
+            state: vec![[0.0; LANES]; blocks],
+            past: 0.0,
+        };
+        for (number, &(pole, residue)) in relaxations.terms.iter().enumerate() {
+            let (block, lane) = (number / LANES, number % LANES);
+            let decay = (-pole * step_s).exp();
+            let mean = -(-pole * step_s).exp_m1() / (pole * step_s);
+            // Of an input that is straight between steps: the new end's and the old end's share.
+            let (from_now, from_before) = (residue * (1.0 - mean), residue * (mean - decay));
+            filter.direct += from_now;
+            filter.decay[block][lane] = decay;
+            filter.gain[block][lane] = decay * from_now + from_before;
+            filter.state[block][lane] = (residue - from_now) * start;
+            filter.past += (residue - from_now) * start;
+        }
+        filter
+    }
+
+    /// Share of the present input in the present output.
+    pub(super) fn direct(&self) -> f64 {
+        self.direct
+    }
+
+    /// What the past leaves in the present output.
+    pub(super) fn past(&self) -> f64 {
+        self.past
+    }
+
+    /// Takes the present input and goes on to the next step.
+    pub(super) fn take(&mut self, input: f64) {
+        let mut sums = [0.0; LANES];
+        for ((state, decay), gain) in self.state.iter_mut().zip(&self.decay).zip(&self.gain) {
+            for lane in 0..LANES {
+                state[lane] = decay[lane] * state[lane] + gain[lane] * input;
+                sums[lane] += state[lane];
+            }
+        }
+        self.past = sums.iter().sum();
+    }
+}
+
+/// The least-squares solutions of a tall system, one for each right-hand side, and the norms of what is left, by
+/// Householder reflections (Golub & Van Loan, Matrix Computations, section 5.3).
+fn least_squares(mut matrix: Array2<f64>, mut right: Array2<f64>) -> (Array2<f64>, Vec<f64>) {
+    let (rows, columns) = matrix.dim();
+    for k in 0..columns {
+        let norm = (k..rows)
+            .map(|i| matrix[[i, k]].powi(2))
+            .sum::<f64>()
+            .sqrt();
+        if norm == 0.0 {
+            continue;
+        }
+        let alpha = if matrix[[k, k]] > 0.0 { -norm } else { norm };
+        let mut v: Vec<f64> = (k..rows).map(|i| matrix[[i, k]]).collect();
+        v[0] -= alpha;
+        let scale = 2.0 / v.iter().map(|x| x * x).sum::<f64>();
+        for target in [&mut matrix, &mut right] {
+            for mut column in target.columns_mut() {
+                let dot: f64 = v.iter().enumerate().map(|(i, x)| x * column[k + i]).sum();
+                for (i, x) in v.iter().enumerate() {
+                    column[k + i] -= scale * dot * x;
+                }
+            }
+        }
+    }
+    let mut solution = Array2::zeros((columns, right.ncols()));
+    for of in 0..right.ncols() {
+        for k in (0..columns).rev() {
+            let known: f64 = (k + 1..columns)
+                .map(|j| matrix[[k, j]] * solution[[j, of]])
+                .sum();
+            solution[[k, of]] = (right[[k, of]] - known) / matrix[[k, k]];
+        }
+    }
+    let left = |column: ArrayView1<f64>| column.iter().skip(columns).map(|x| x * x).sum::<f64>();
+    let errors = right
+        .columns()
+        .into_iter()
+        .map(|column| left(column).sqrt());
+    (solution, errors.collect())
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn a_sum_of_relaxations_is_found_again() {
+        let truth = Relaxations {
+            direct: 0.2,
+            terms: vec![(1e7, 0.5), (1e8, -0.1), (1e9, 0.4)],
+        };
+        let omegas: Vec<f64> = (0..40)
+            .map(|i| 1e6 * 10f64.powf(f64::from(i) / 10.0))
+            .collect();
+        let wanted = Wanted {
+            values: omegas.iter().map(|&omega| truth.at(omega)).collect(),
+            at_zero: Some(1.0),
+            above: 0.2,
+        };
+        let (found, error) = Relaxations::fit(&[1e7, 1e8, 1e9], &omegas, &[wanted]).remove(0);
+        assert!(error < 1e-9);
+        assert!((found.direct - truth.direct).abs() < 1e-9);
+        for (a, b) in found.terms.iter().zip(&truth.terms) {
+            assert!((a.1 - b.1).abs() < 1e-9);
+        }
+    }
+
+    #[test]
+    fn a_marched_ramp_matches_the_exact_response() {
+        let pole = 3e8;
+        let relaxations = Relaxations {
+            direct: 0.0,
+            terms: vec![(pole, 1.0)],
+        };
+        let step_s = 1e-10;
+        let mut filter = Filter::new(&relaxations, step_s, 0.0);
+        for step in 0..200 {
+            let time_s = f64::from(step) * step_s;
+            let past = filter.past();
+            let output = past + filter.direct() * time_s;
+            filter.take(time_s);
+            // response of 1 / (1 + s / p) to t: t - (1 - e^{-pt}) / p
+            let exact = time_s - (1.0 - (-pole * time_s).exp()) / pole;
+            assert!((output - exact).abs() < 1e-12 * time_s + 1e-24);
+        }
+    }
+}

@@ -1,0 +1,131 @@
+//! Time of the whole chain a net (march, transform, radiation, both distances) and its ratio to the transform of
+//! the net's own waveforms. `cargo bench --bench chain`
+//!
+//! Everything runs on one thread, and the ratios are from one run, since machines differ.
+
+#![allow(clippy::print_stdout)]
+
+use std::hint::black_box;
+use std::time::{Duration, Instant};
+
+use ringfield::board::read_board;
+use ringfield::board::{Board, Net};
+use ringfield::limit::default_limits;
+use ringfield::radiation::{LargePlane, Layout, Site, strongest_v};
+use ringfield::ringing::{Network, settle, steps_per_period};
+use ringfield::spectrum::spectrum;
+use ringfield::study::{CheckSetup, MODEL_SIGMA_DB, check_net};
+
+const LOWEST_HZ: f64 = 30e6;
+const TOP_HZ: f64 = 1e9;
+
+fn main() {
+    let one = nets(1);
+    let thousand = nets(1000);
+    println!("clamped nets on a 4 mil microstrip, lossy, 25-125 MHz, to 1 GHz; one thread");
+    for (label, nets, rounds) in [("one net", &one, 200), ("1 000 nets", &thousand, 1)] {
+        report(label, nets, rounds);
+    }
+}
+
+fn report(label: &str, nets: &[Net], rounds: u32) {
+    let setup = CheckSetup {
+        limits: default_limits(),
+        distances_m: vec![3.0, 10.0],
+        site: Site::OpenArea,
+        lowest_frequency_hz: LOWEST_HZ,
+        top_frequency_hz: TOP_HZ,
+        model_sigma_db: MODEL_SIGMA_DB,
+    };
+    // A first net fills the caches of plans and pages.
+    black_box(check_net(&nets[0], &setup));
+    let whole = time(nets, rounds, |net| {
+        black_box(check_net(net, &setup));
+    });
+    let march = time(nets, rounds, |net| {
+        let network = Network::of(net);
+        black_box(settle(&network, steps_per_period(&network, TOP_HZ), TOP_HZ));
+    });
+    let worked: Vec<_> = nets
+        .iter()
+        .map(|net| {
+            let network = Network::of(net);
+            let settled = settle(&network, steps_per_period(&network, TOP_HZ), TOP_HZ);
+            let layout = Layout::of(&network, net.along);
+            (network, settled, layout)
+        })
+        .collect();
+    let transform = time(&worked, rounds, |(network, settled, _)| {
+        black_box(spectrum(network, settled, LOWEST_HZ, TOP_HZ));
+    });
+    let spectra: Vec<_> = worked
+        .iter()
+        .map(|(network, settled, layout)| {
+            (
+                network,
+                layout,
+                spectrum(network, settled, LOWEST_HZ, TOP_HZ),
+            )
+        })
+        .collect();
+    let radiation = time(&spectra, rounds, |(network, layout, spectrum)| {
+        black_box(strongest_v(&LargePlane, network, layout, spectrum));
+    });
+    let steps: usize = worked
+        .iter()
+        .map(|(_, settled, _)| settled.report.steps_per_period * settled.report.periods)
+        .sum();
+    let micros = |time: Duration| time.as_secs_f64() * 1e6;
+    println!(
+        "{label}: {:.0} us a net, {:.1} times its transform",
+        micros(whole),
+        micros(whole) / micros(transform)
+    );
+    println!(
+        "  march {:.0} us ({:.1} ns a step, {} steps), transform {:.1} us, radiation {:.0} us, rest {:.0} us",
+        micros(march),
+        micros(march) * 1e3 * nets.len() as f64 / steps as f64,
+        steps / nets.len(),
+        micros(transform),
+        micros(radiation),
+        micros(whole) - micros(march) - micros(transform) - micros(radiation)
+    );
+}
+
+/// Mean time of one item.
+fn time<T>(items: &[T], rounds: u32, mut work: impl FnMut(&T)) -> Duration {
+    let started = Instant::now();
+    for _ in 0..rounds {
+        for item in items {
+            work(item);
+        }
+    }
+    started.elapsed() / rounds / items.len() as u32
+}
+
+/// Clamped nets of many clocks, lengths and loads.
+fn nets(count: usize) -> Vec<Net> {
+    let mut text = String::from(
+        "stackup: {outer: {microstrip: {height: 4 mil, permittivity: 4.3}}}\n\
+         receivers:\n  input: {capacitance: 5 pF, clamps: {knee: 0.7 V, resistance: 10 ohm, supply: 3.3 V}}\n\
+         drivers:\n",
+    );
+    for strength in 0..8 {
+        let resistance_ohm = 3 + 5 * strength;
+        text += &format!(
+            "  d{strength}: {{swing: 3.3 V, resistance: {resistance_ohm} ohm, rise: 0.8 ns}}\n"
+        );
+    }
+    text += "nets:\n";
+    for net in 0..count {
+        let clock_mhz = 25 + net * 37 % 101;
+        let length_mil = 1500 + net * 53 % 5000;
+        text += &format!(
+            "  - {{name: N{net}, driver: d{}, clock: {clock_mhz} MHz, path: [trace: {{layer: outer, width: 4 mil, length: {length_mil} mil}}, receiver: input]}}\n",
+            net % 8
+        );
+    }
+    let reading = read_board(&text, "bench");
+    let Board { nets, .. } = reading.board.expect("the board is sound");
+    nets
+}
