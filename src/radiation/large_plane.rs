@@ -12,6 +12,7 @@
 //! which, integrated over the half sphere, gives the powers that Lewin ("Radiation from discontinuities
 //! in strip-line", Proc. IEE 107C, 1960, 163-170) published for an open and a matched end.
 
+use super::peak::vertex;
 use super::{Antenna, LitSegment};
 use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
 use num_complex::Complex64;
@@ -257,14 +258,4 @@ fn strongest_of_any(frequency_hz: f64, segments: &[LitSegment]) -> f64 {
         )
     };
     around + upward - value
-}
-
-/// Height of the parabola through three even samples if they hold a peak, else the middle one.
-fn vertex(left: f64, middle: f64, right: f64) -> f64 {
-    let bend = left - 2.0 * middle + right;
-    if bend < 0.0 && middle >= left && middle >= right {
-        middle - (right - left).powi(2) / (8.0 * bend)
-    } else {
-        middle
-    }
 }

@@ -9,6 +9,7 @@
 mod large_plane;
 mod layout;
 mod loop_area;
+mod peak;
 mod site;
 
 pub use large_plane::{LargePlane, field_toward};

@@ -1,5 +1,6 @@
 //! The test site: free space, or an open area with a metal floor and a height scan.
 
+use super::peak::vertex;
 use crate::LIGHT_SPEED_M_PER_S;
 use std::f64::consts::TAU;
 
@@ -9,8 +10,9 @@ pub const TABLE_HEIGHT_M: f64 = 0.8;
 pub const FLOOR_ABSORBED_ABOVE_HZ: f64 = 1e9;
 const LOWEST_ANTENNA_M: f64 = 1.0;
 const HIGHEST_ANTENNA_M: f64 = 4.0;
-/// The interference pattern over height turns slowly: 5 cm is an eighth of its shortest period.
-const HEIGHT_STEPS: usize = 60;
+/// The interference pattern over height turns slowly: 10 cm is a quarter of its shortest period, and a parabola
+/// finds the peak between.
+const HEIGHT_STEPS: usize = 30;
 
 /// Where the field is measured.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
@@ -38,14 +40,20 @@ impl Site {
 /// level and upright, as a multiple of the free-space field at the same level distance; the floor
 /// conducts perfectly.
 pub fn two_ray_factors(frequency_hz: f64, distance_m: f64, source_height_m: f64) -> [f64; 2] {
-    let mut highest = [0.0_f64; 2];
-    for step in 0..=HEIGHT_STEPS {
+    let mut sums = [[0.0; 2]; HEIGHT_STEPS + 1];
+    for (step, sum) in sums.iter_mut().enumerate() {
         let share = step as f64 / HEIGHT_STEPS as f64;
         let antenna_m = LOWEST_ANTENNA_M + share * (HIGHEST_ANTENNA_M - LOWEST_ANTENNA_M);
-        let sums = two_rays(frequency_hz, distance_m, source_height_m, antenna_m);
-        highest = [highest[0].max(sums[0]), highest[1].max(sums[1])];
+        *sum = two_rays(frequency_hz, distance_m, source_height_m, antenna_m);
     }
-    highest.map(f64::sqrt)
+    [0, 1].map(|way| {
+        let peaks = sums
+            .windows(3)
+            .map(|w| vertex(w[0][way], w[1][way], w[2][way]));
+        peaks
+            .fold(sums[0][way].max(sums[HEIGHT_STEPS][way]), f64::max)
+            .sqrt()
+    })
 }
 
 /// The squared sum of the direct and the reflected ray between two heights, antenna level and upright.

@@ -2,11 +2,15 @@
 
 use super::cluster::{Cluster, Load};
 use super::network::{Branch, BranchEnd, DRIVER_NODE, Network, Span};
+use super::steps::Pace;
 use super::travelling::{Model, TravellingLine};
 use ndarray::Array2;
 
 /// Largest share of the swing by which the settled waveform may still be off.
 const SETTLED: f64 = 1e-6;
+/// Losses are fitted from here on: what lies lower is not radiated, and its slow relaxations would keep a slow net
+/// from its rest.
+const LOWEST_LOSSY_HZ: f64 = 2e6;
 /// Most steps of one march, about a second's worth.
 const MOST_STEPS: usize = 30_000_000;
 
@@ -21,11 +25,11 @@ pub struct Settled {
     pub report: MarchReport,
 }
 
-/// One settled period, sampled evenly from the start of the rising edge.
+/// One settled period, from the start of the rising edge.
 #[derive(Debug, Clone, PartialEq)]
 pub struct SettledWaveform {
-    /// Time from one sample to the next.
-    pub step_s: f64,
+    /// When the samples were taken.
+    pub pace: Pace,
     /// Voltage at the driver's pin.
     pub driver_v: Vec<f64>,
     /// Current out of the driver.
@@ -59,6 +63,8 @@ pub enum Taken {
 pub struct MarchReport {
     /// Steps in one period.
     pub steps_per_period: usize,
+    /// Steps of them that were marched; the others are time at rest.
+    pub marched_steps: usize,
     /// Periods marched until one repeated.
     pub periods: usize,
     /// How far the last period may still be from the settled one, as a share of the swing.
@@ -67,38 +73,27 @@ pub struct MarchReport {
     pub settled: bool,
 }
 
-/// Marches a net, in `steps_per_period` even steps, until a whole period repeats. Losses are fitted up to the top
-/// frequency.
+/// Marches a net until a whole period repeats, in steps fine enough for the top frequency, up to which losses are
+/// fitted.
 ///
 /// A net that does not settle within the longest march is returned as it stands, with the residual
 /// in its report.
-pub fn settle(network: &Network, steps_per_period: usize, top_frequency_hz: f64) -> Settled {
-    let mut march = March::new(network, steps_per_period, top_frequency_hz);
-    let swing_v = network.source.swing_v();
-    let most_periods = (MOST_STEPS / steps_per_period).max(4);
-    let mut last_change = f64::INFINITY;
-    let mut report = MarchReport {
-        steps_per_period,
-        periods: 0,
-        residual: f64::INFINITY,
-        settled: false,
-    };
-    while report.periods < most_periods && !report.settled {
-        let change = march.one_period() / swing_v;
-        report.periods += 1;
-        // Changes that shrink by a constant ratio leave this sum of all that are still to come.
-        let ratio = (change / last_change).min(1.0 - 1e-9);
-        report.residual = change.max(change * ratio / (1.0 - ratio));
-        report.settled = report.residual < SETTLED;
-        last_change = change;
+pub fn settle(network: &Network, top_frequency_hz: f64) -> Settled {
+    let mut pace = Pace::first(network, top_frequency_hz);
+    loop {
+        let mut march = March::new(network, pace, top_frequency_hz);
+        let report = march.settle();
+        if pace.is_whole() || march.restlessness() < SETTLED * network.source.swing_v() {
+            return march.into_settled(report);
+        }
+        pace = pace.longer();
     }
-    march.into_settled(report)
 }
 
 /// The state of a march.
 struct March<'a> {
     network: &'a Network,
-    step_s: f64,
+    pace: Pace,
     /// The driver's state at each step of the period: conductance and short-circuit current.
     drive: Vec<(f64, f64)>,
     base_conductance_s: f64,
@@ -125,15 +120,16 @@ enum LineState {
 }
 
 impl<'a> March<'a> {
-    fn new(network: &'a Network, steps: usize, top_frequency_hz: f64) -> Self {
-        let step_s = network.period_s / steps as f64;
+    fn new(network: &'a Network, pace: Pace, top_frequency_hz: f64) -> Self {
+        let (step_s, steps) = (pace.step_s, pace.marched());
         let source = &network.source;
         let low_v = source.low_v();
         let mut branches: Vec<Branch> = network.branches.clone();
         let mut lines = Vec::with_capacity(network.spans.len());
+        let lowest_hz = (1.0 / network.period_s).max(LOWEST_LOSSY_HZ);
         for span in &network.spans {
             let (near, far) = (span.near, span.far);
-            let model = Model::of(&span.line, 1.0 / network.period_s, top_frequency_hz);
+            let model = Model::of(&span.line, lowest_hz, top_frequency_hz);
             lines.push(
                 match TravellingLine::new([near, far], &model, step_s, steps, low_v) {
                     Some(line) => LineState::Waves(Box::new(line)),
@@ -159,7 +155,7 @@ impl<'a> March<'a> {
             .collect();
         let drive = (0..steps)
             .map(|step| {
-                let high_share = source.high_share(step as f64 * step_s);
+                let high_share = source.high_share(pace.time_s(step));
                 let conductance_s = source.conductance_s(high_share);
                 (conductance_s, conductance_s * source.voltage_v(high_share))
             })
@@ -168,7 +164,7 @@ impl<'a> March<'a> {
         let clusters = clusters(network, &lines, &branches, base_conductance_s);
         Self {
             network,
-            step_s,
+            pace,
             drive,
             base_conductance_s,
             lines,
@@ -177,12 +173,55 @@ impl<'a> March<'a> {
             injected_a: vec![0.0; network.node_count],
             voltage_v: vec![low_v; network.node_count],
             waveform: SettledWaveform {
-                step_s,
+                pace,
                 driver_v: vec![low_v; steps],
                 driver_a: vec![0.0; steps],
                 receivers_v: vec![vec![low_v; steps]; network.inputs.len()],
             },
         }
+    }
+
+    /// Marches until a period repeats.
+    fn settle(&mut self) -> MarchReport {
+        let swing_v = self.network.source.swing_v();
+        let marched_steps = self.pace.marched();
+        let most_periods = (MOST_STEPS / marched_steps).max(4);
+        let mut last_change = f64::INFINITY;
+        let mut report = MarchReport {
+            steps_per_period: self.pace.total(),
+            marched_steps,
+            periods: 0,
+            residual: f64::INFINITY,
+            settled: false,
+        };
+        while report.periods < most_periods && !report.settled {
+            let change = self.one_period() / swing_v;
+            report.periods += 1;
+            // Changes that shrink by a constant ratio leave this sum of all that are still to come.
+            let ratio = (change / last_change).min(1.0 - 1e-9);
+            report.residual = change.max(change * ratio / (1.0 - ratio));
+            report.settled = report.residual < SETTLED;
+            last_change = change;
+        }
+        report
+    }
+
+    /// How much any voltage or wave still changes towards the ends of the two stretches.
+    fn restlessness(&self) -> f64 {
+        let (high, all) = (self.pace.high.marched, self.pace.marched());
+        let change = |samples: &[f64]| {
+            let late = |from: usize, to: usize| {
+                (samples[to - 1] - samples[to - 1 - (to - from) / 8]).abs()
+            };
+            late(0, high).max(late(high, all))
+        };
+        let waves = self.lines.iter().flat_map(LineState::last_period);
+        let waveform = &self.waveform;
+        let voltages = waveform.receivers_v.iter().chain([&waveform.driver_v]);
+        voltages
+            .map(|v| change(v))
+            .chain(waves.map(|w| change(&w)))
+            .fold(0.0, f64::max)
     }
 
     /// Marches one period; returns the largest change of any wave or voltage since the last one.
@@ -231,7 +270,6 @@ impl<'a> March<'a> {
     }
 
     fn into_settled(self, report: MarchReport) -> Settled {
-        debug_assert_eq!(self.step_s, self.waveform.step_s);
         let waves = self.lines.into_iter().map(LineState::into_record).collect();
         Settled {
             waveform: self.waveform,
@@ -266,24 +304,24 @@ impl LineState {
         }
     }
 
-    fn into_record(self) -> WaveRecord {
+    /// The outward and the inward wave of the last period.
+    fn last_period(&self) -> [Vec<f64>; 2] {
         match self {
-            Self::Waves(line) => {
-                let [outward_v, inward_v] = line.last_period();
-                WaveRecord {
-                    outward_v,
-                    inward_v,
-                    taken: Taken::AtStart,
-                }
-            }
-            Self::Lumped {
-                record: [outward_v, inward_v],
-                ..
-            } => WaveRecord {
-                outward_v,
-                inward_v,
-                taken: Taken::InMiddle,
-            },
+            Self::Waves(line) => line.last_period(),
+            Self::Lumped { record, .. } => record.clone(),
+        }
+    }
+
+    fn into_record(self) -> WaveRecord {
+        let [outward_v, inward_v] = self.last_period();
+        let taken = match self {
+            Self::Waves(_) => Taken::AtStart,
+            Self::Lumped { .. } => Taken::InMiddle,
+        };
+        WaveRecord {
+            outward_v,
+            inward_v,
+            taken,
         }
     }
 }

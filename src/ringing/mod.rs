@@ -22,4 +22,4 @@ pub use march::{MarchReport, Settled, SettledWaveform, Taken, WaveRecord, settle
 pub use network::{Branch, BranchEnd, DRIVER_NODE, Input, Network, Span};
 pub use rest::rest_levels_v;
 pub use source::Source;
-pub use steps::steps_per_period;
+pub use steps::{Pace, Stretch};

@@ -41,9 +41,9 @@ impl Source {
         self.high_v - self.low_v
     }
 
-    /// When the rising and the falling edge start, within the period.
-    pub fn starts_s(&self) -> [f64; 2] {
-        [0.0, self.fall_start_s]
+    /// When the falling edge starts, within the period; the rising edge starts at zero.
+    pub fn fall_start_s(&self) -> f64 {
+        self.fall_start_s
     }
 
     /// When the rising and the falling edge are half over, within the period.
@@ -54,6 +54,11 @@ impl Source {
     /// Whether the resistance is the same in both states.
     pub fn is_steady(&self) -> bool {
         self.low_resistance_ohm == self.high_resistance_ohm
+    }
+
+    /// Duration of the rising and the falling edge, 0 to 100 %.
+    pub fn edges_s(&self) -> [f64; 2] {
+        [self.rise_s, self.fall_s]
     }
 
     /// Duration of the shorter edge, 0 to 100 %.

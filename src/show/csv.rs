@@ -57,7 +57,7 @@ pub fn waveform_csv(net: &NetResult) -> String {
     header.extend(net.signal.receivers.iter().map(|r| format!("{}_v", r.name)));
     writer.write_record(&header).expect(IN_MEMORY);
     for (index, (driver_v, driver_a)) in wave.driver_v.iter().zip(&wave.driver_a).enumerate() {
-        let mut row = vec![index as f64 * wave.step_s, *driver_v, *driver_a];
+        let mut row = vec![wave.pace.time_s(index), *driver_v, *driver_a];
         row.extend(wave.receivers_v.iter().map(|receiver| receiver[index]));
         writer.serialize(row).expect(IN_MEMORY);
     }

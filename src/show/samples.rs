@@ -3,7 +3,7 @@
 use crate::board::UnusableNet;
 use crate::limit::{Band, Detector, Limit, LimitAt, limits_at};
 use crate::radiation::Site;
-use crate::ringing::{MarchReport, SettledWaveform};
+use crate::ringing::{MarchReport, Pace, SettledWaveform, Stretch};
 use crate::study::{
     ClampSignal, FieldReading, Harmonic, NetResult, ReceiverSignal, Signal, Verdict, Worst,
 };
@@ -90,12 +90,23 @@ pub(super) fn net(name: &str, clock_hz: f64, harmonics: usize) -> NetResult {
         },
         march: MarchReport {
             steps_per_period: STEPS,
+            marched_steps: STEPS,
             periods: 12,
             residual: 3e-7,
             settled: true,
         },
         waveform: SettledWaveform {
-            step_s: 1.0 / clock_hz / STEPS as f64,
+            pace: Pace {
+                step_s: 1.0 / clock_hz / STEPS as f64,
+                high: Stretch {
+                    marched: STEPS / 2,
+                    left_out: 0,
+                },
+                low: Stretch {
+                    marched: STEPS / 2,
+                    left_out: 0,
+                },
+            },
             driver_v: ringing(clock_hz, 0.0, 0.3),
             driver_a: ringing(clock_hz, 0.0, 0.9)
                 .iter()

@@ -3,13 +3,14 @@
 //! The transform covers exactly one period, so each harmonic is one bin and nothing leaks. A receiver
 //! reads the rms value of a steady line, which is the peak value over the square root of two.
 
+mod transform;
+
 use crate::ringing::{Network, Settled, Taken, WaveRecord};
 use ndarray::{Array2, ArrayView1};
 use num_complex::Complex64;
-use realfft::RealFftPlanner;
-use std::cell::RefCell;
-use std::f64::consts::{SQRT_2, TAU};
+use std::f64::consts::TAU;
 use std::ops::RangeInclusive;
+use transform::Transform;
 
 /// The harmonics of a net within a band. The phase reference is the start of the rising edge.
 #[derive(Debug, Clone)]
@@ -59,7 +60,7 @@ pub fn spectrum(network: &Network, settled: &Settled, lowest_hz: f64, top_hz: f6
     let harmonics = first..=last;
     let count = (last + 1).saturating_sub(first);
 
-    let mut transform = Transform::new(settled.report.steps_per_period, harmonics.clone());
+    let mut transform = Transform::new(&settled.waveform.pace, harmonics.clone());
     let driver_a = transform.phasors(&settled.waveform.driver_a);
     let mut receivers_v = Array2::zeros((network.inputs.len(), count));
     for (mut row, record) in receivers_v
@@ -100,49 +101,5 @@ pub fn spectrum(network: &Network, settled: &Settled, lowest_hz: f64, top_hz: f6
         receivers_v,
         outward_v,
         inward_v,
-    }
-}
-
-thread_local! {
-    /// Plans are dear to make and the same for every net of one clock.
-    static PLANNER: RefCell<RealFftPlanner<f64>> = RefCell::new(RealFftPlanner::new());
-}
-
-/// A transform of real periods of one length.
-struct Transform {
-    plan: std::sync::Arc<dyn realfft::RealToComplex<f64>>,
-    input: Vec<f64>,
-    bins: Vec<Complex64>,
-    scratch: Vec<Complex64>,
-    harmonics: RangeInclusive<usize>,
-}
-
-impl Transform {
-    fn new(length: usize, harmonics: RangeInclusive<usize>) -> Self {
-        assert!(
-            2 * harmonics.end() < length,
-            "too few samples for the highest harmonic"
-        );
-        let plan = PLANNER.with_borrow_mut(|planner| planner.plan_fft_forward(length));
-        Self {
-            input: plan.make_input_vec(),
-            bins: plan.make_output_vec(),
-            scratch: plan.make_scratch_vec(),
-            plan,
-            harmonics,
-        }
-    }
-
-    /// The rms phasors of the wanted harmonics.
-    fn phasors(&mut self, period: &[f64]) -> Vec<Complex64> {
-        self.input.copy_from_slice(period);
-        self.plan
-            .process_with_scratch(&mut self.input, &mut self.bins, &mut self.scratch)
-            .expect("all buffers were made by the plan");
-        let to_rms = SQRT_2 / period.len() as f64;
-        self.harmonics
-            .clone()
-            .map(|harmonic| self.bins[harmonic] * to_rms)
-            .collect()
     }
 }

@@ -8,7 +8,7 @@ use crate::limit::{Limit, LimitAt, limits_at};
 use crate::radiation::{
     LargePlane, Layout, Site, loop_area_v_per_m, near_field_factor, strongest_v,
 };
-use crate::ringing::{Network, Settled, settle, steps_per_period};
+use crate::ringing::{Network, Settled, settle};
 use crate::spectrum::{Spectrum, spectrum};
 
 /// What to measure and against what.
@@ -31,8 +31,7 @@ pub struct CheckSetup {
 /// Ringing, spectrum, field and margins of one net.
 pub fn check_net(net: &Net, setup: &CheckSetup) -> NetResult {
     let network = Network::of(net);
-    let steps = steps_per_period(&network, setup.top_frequency_hz);
-    let settled = settle(&network, steps, setup.top_frequency_hz);
+    let settled = settle(&network, setup.top_frequency_hz);
     let spectrum = spectrum(
         &network,
         &settled,

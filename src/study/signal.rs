@@ -3,7 +3,8 @@
 //! A receiver's levels at rest are those it would come to if the driver stayed in one state. Times count from
 //! the middle of the driver's open-circuit edge.
 
-use crate::ringing::{Input, Network, Settled, rest_levels_v};
+use crate::ringing::{Input, Network, Pace, Settled, rest_levels_v};
+use std::ops::Range;
 
 /// A waveform has settled when it stays this close to its level at rest, as a share of the swing.
 const SETTLED_SHARE: f64 = 0.1;
@@ -88,7 +89,6 @@ impl ReceiverSignal {
 /// Reads the findings off a settled waveform.
 pub(super) fn signal(network: &Network, settled: &Settled) -> Signal {
     let waveform = &settled.waveform;
-    let squares: f64 = waveform.driver_a.iter().map(|a| a * a).sum();
     let at_rest = rest_levels_v(network, false)
         .into_iter()
         .zip(rest_levels_v(network, true));
@@ -97,14 +97,16 @@ pub(super) fn signal(network: &Network, settled: &Settled) -> Signal {
         .iter()
         .zip(&waveform.receivers_v)
         .zip(at_rest)
-        .map(|((input, voltage_v), at_rest)| receiver_signal(network, input, voltage_v, at_rest))
+        .map(|((input, voltage_v), at_rest)| {
+            receiver_signal(network, input, &waveform.pace, voltage_v, at_rest)
+        })
         .collect();
     Signal {
         driver_peak_current_a: waveform
             .driver_a
             .iter()
             .fold(0.0, |peak, a| a.abs().max(peak)),
-        driver_rms_current_a: (squares / waveform.driver_a.len() as f64).sqrt(),
+        driver_rms_current_a: waveform.pace.mean(&waveform.driver_a, |a| a * a).sqrt(),
         receivers,
     }
 }
@@ -112,6 +114,7 @@ pub(super) fn signal(network: &Network, settled: &Settled) -> Signal {
 fn receiver_signal(
     network: &Network,
     input: &Input,
+    pace: &Pace,
     voltage_v: &[f64],
     (rest_low_v, rest_high_v): (f64, f64),
 ) -> ReceiverSignal {
@@ -121,11 +124,17 @@ fn receiver_signal(
     let middle_v = (rest_low_v + rest_high_v) / 2.0;
 
     // Each edge as a rise from its rest level at zero to one at `swing`, up to the next edge.
-    let step_s = network.period_s / voltage_v.len() as f64;
-    let [rise_s, fall_s] = network.source.middles_s();
-    let [next_rise_s, next_fall_s] = network.source.starts_s();
-    let up = Edge::new(voltage_v, step_s, rise_s, next_fall_s, |v| v - rest_low_v);
-    let down = Edge::new(voltage_v, step_s, fall_s, next_rise_s, |v| rest_high_v - v);
+    let [rise, fall] = network
+        .source
+        .middles_s()
+        .map(|time_s| pace.step_from(time_s));
+    let next_fall = pace.step_from(network.source.fall_start_s());
+    let edge = |steps: Range<usize>, risen: &dyn Fn(f64) -> f64| Edge {
+        risen_v: voltage_v[steps].iter().map(|&v| risen(v)).collect(),
+        step_s: pace.step_s,
+    };
+    let up = edge(rise.min(next_fall)..next_fall, &|v| v - rest_low_v);
+    let down = edge(fall..pace.marched(), &|v| rest_high_v - v);
     let later =
         |time: fn(&Edge, f64) -> Option<f64>| Some(time(&up, swing_v)?.max(time(&down, swing_v)?));
 
@@ -138,22 +147,14 @@ fn receiver_signal(
     } else {
         thresholds_v.clone()
     };
-    let clamp = |currents: &dyn Fn(f64) -> Option<f64>, drop_v: &dyn Fn(f64) -> f64| {
-        let over_period: Vec<(f64, f64)> = voltage_v
-            .iter()
-            .map(|&v| Some((currents(v)?, drop_v(v))))
-            .collect::<Option<_>>()?;
-        let count = over_period.len() as f64;
+    let clamp = |currents_a: &dyn Fn(f64) -> Option<f64>, drop_v: &dyn Fn(f64) -> f64| {
+        currents_a(0.0)?;
+        let current_a = |v| currents_a(v).unwrap_or(0.0);
         Some(ClampSignal {
-            peak_a: over_period
-                .iter()
-                .fold(0.0, |peak, clamp| clamp.0.max(peak)),
-            charge_c: over_period.iter().map(|clamp| clamp.0).sum::<f64>() * step_s,
-            power_w: over_period
-                .iter()
-                .map(|clamp| clamp.0 * clamp.1)
-                .sum::<f64>()
-                / count,
+            // A clamp's current rises with the voltage over it.
+            peak_a: current_a(maximum_v).max(current_a(minimum_v)),
+            charge_c: pace.mean(voltage_v, current_a) * network.period_s,
+            power_w: pace.mean(voltage_v, |v| current_a(v) * drop_v(v)),
         })
     };
     ReceiverSignal {
@@ -204,23 +205,6 @@ struct Edge {
 }
 
 impl Edge {
-    fn new(
-        period_v: &[f64],
-        step_s: f64,
-        from_s: f64,
-        to_s: f64,
-        risen: impl Fn(f64) -> f64,
-    ) -> Self {
-        let count = period_v.len();
-        let start = (from_s / step_s).ceil() as usize;
-        let end = (to_s / step_s).floor() as usize;
-        let end = if end > start { end } else { end + count };
-        Self {
-            risen_v: (start..end).map(|i| risen(period_v[i % count])).collect(),
-            step_s,
-        }
-    }
-
     /// Until it first crosses the middle.
     fn flight_s(&self, swing_v: f64) -> Option<f64> {
         let crossing = self.risen_v.iter().position(|&v| v >= swing_v / 2.0)?;

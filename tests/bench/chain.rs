@@ -12,7 +12,7 @@ use ringfield::board::read_board;
 use ringfield::board::{Board, Net};
 use ringfield::limit::default_limits;
 use ringfield::radiation::{LargePlane, Layout, Site, strongest_v};
-use ringfield::ringing::{Network, settle, steps_per_period};
+use ringfield::ringing::{Network, settle};
 use ringfield::spectrum::spectrum;
 use ringfield::study::{CheckSetup, MODEL_SIGMA_DB, check_net};
 
@@ -44,13 +44,13 @@ fn report(label: &str, nets: &[Net], rounds: u32) {
     });
     let march = time(nets, rounds, |net| {
         let network = Network::of(net);
-        black_box(settle(&network, steps_per_period(&network, TOP_HZ), TOP_HZ));
+        black_box(settle(&network, TOP_HZ));
     });
     let worked: Vec<_> = nets
         .iter()
         .map(|net| {
             let network = Network::of(net);
-            let settled = settle(&network, steps_per_period(&network, TOP_HZ), TOP_HZ);
+            let settled = settle(&network, TOP_HZ);
             let layout = Layout::of(&network, net.along);
             (network, settled, layout)
         })
@@ -73,7 +73,7 @@ fn report(label: &str, nets: &[Net], rounds: u32) {
     });
     let steps: usize = worked
         .iter()
-        .map(|(_, settled, _)| settled.report.steps_per_period * settled.report.periods)
+        .map(|(_, settled, _)| settled.report.marched_steps * settled.report.periods)
         .sum();
     let micros = |time: Duration| time.as_secs_f64() * 1e6;
     println!(

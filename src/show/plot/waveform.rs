@@ -59,7 +59,7 @@ pub fn waveform_picture(report: &CheckReport, net: &NetResult) -> Picture {
         bottom: PANEL_BOTTOM,
         ..upper
     };
-    let period_ns = wave.step_s * wave.driver_v.len() as f64 * 1e9;
+    let period_ns = wave.pace.step_s * wave.driver_v.len() as f64 * 1e9;
     let time = Axis::linear((0.0, period_ns), (PANEL_LEFT, PANEL_RIGHT));
     draw(
         &mut picture,
