@@ -103,8 +103,8 @@ impl Stretches {
             )
         });
         let mut chirp_bins = vec![Complex64::ZERO; size];
-        for k in 0..count {
-            chirp_bins[k] = half_turns(k * k, pace.total());
+        for (k, bin) in chirp_bins.iter_mut().enumerate().take(count) {
+            *bin = half_turns(k * k, pace.total());
         }
         for k in 1..longest {
             chirp_bins[size - k] = half_turns(k * k, pace.total());
