@@ -81,12 +81,13 @@ impl Loss {
         }
     }
 
-    /// Series impedance per length without the resistance to direct current.
+    /// Series impedance per length.
     pub fn series_ohm_per_m(&self, omega: f64) -> Complex64 {
         let skin_depth_m = (2.0 / (omega * MU0_H_PER_M * COPPER_S_PER_M)).sqrt();
         let rough = 1.0 + 2.0 / PI * (1.4 * (self.roughness_m / skin_depth_m).powi(2)).atan();
         let skin = self.skin_ohm_per_m * rough * Complex64::new(0.0, omega).sqrt();
-        skin + Complex64::new(0.0, omega * self.air_impedance_ohm / LIGHT_SPEED_M_PER_S)
+        let inductance_h_per_m = self.air_impedance_ohm / LIGHT_SPEED_M_PER_S;
+        self.dc_ohm_per_m + skin + Complex64::new(0.0, omega * inductance_h_per_m)
     }
 
     /// Shunt admittance per length.

@@ -63,8 +63,7 @@ pub enum Place {
 }
 
 impl Line {
-    /// The waves at an angular frequency, without the resistance to direct current, which the march takes
-    /// as lumped at the ends.
+    /// The waves at an angular frequency.
     pub fn wave_at(&self, omega: f64) -> WaveOnLine {
         match &self.loss {
             None => WaveOnLine {

@@ -4,6 +4,7 @@
 //! planes", IEEE Trans. MTT-26, 1978), and the usual parallel combination off centre.
 
 use super::{CrossSection, Range};
+use crate::ETA0_OHM;
 use std::f64::consts::PI;
 
 /// Impedance of a strip between two planes; the effective permittivity is the material's own.
@@ -57,7 +58,7 @@ fn centred_air_ohm(width_m: f64, spacing_m: f64, copper_m: f64) -> f64 {
     let argument = PI * thin_width_m / (2.0 * gap_m);
     let k = 1.0 / argument.cosh();
     // K(k) / K(k') by the arithmetic-geometric mean
-    30.0 * PI * mean(1.0, k) / mean(1.0, argument.tanh())
+    ETA0_OHM / 4.0 * mean(1.0, k) / mean(1.0, argument.tanh())
 }
 
 /// Wheeler's growth of the width that stands for the thickness, with the planes `copper_m` closer.

@@ -11,49 +11,42 @@ pub(super) struct Relaxations {
     pub(super) terms: Vec<(f64, f64)>,
 }
 
-/// What a sum of relaxations is to be like.
-pub(super) struct Wanted {
-    /// Its values at the sampled frequencies.
-    pub(super) values: Vec<Complex64>,
-    /// Its value at zero, where that has to be exact.
-    pub(super) at_zero: Option<f64>,
-    /// About what it comes to far above the samples.
-    pub(super) above: f64,
+/// Where a sum of relaxations is held to its samples, and how much each counts.
+pub(super) struct Sample {
+    pub(super) omega: f64,
+    pub(super) weight: f64,
 }
 
 impl Relaxations {
-    /// For each wanted function, the sum with the given poles that comes nearest to it in the sense of least
-    /// squares, and how far off it is (root of the sum of squares). All share the sampled frequencies (rad/s) and
-    /// whether zero is exact.
-    pub(super) fn fit(poles: &[f64], omegas: &[f64], wanted: &[Wanted]) -> Vec<(Self, f64)> {
+    /// For each function, given by its values at the samples, the sum with the given poles that comes nearest to it
+    /// in the sense of least squares, and how far off it is (root of the weighted sum of squares). With `at_zero`
+    /// all have that value at zero.
+    pub(super) fn fit(
+        poles: &[f64],
+        samples: &[Sample],
+        functions: &[Vec<Complex64>],
+        at_zero: Option<f64>,
+    ) -> Vec<(Self, f64)> {
         const EXACTLY: f64 = 1e3;
-        let roughly = 1e-2 * (omegas.len() as f64).sqrt();
-        let (columns, rows) = (poles.len() + 1, 2 * omegas.len() + 2);
-        // Rows: real parts, imaginary parts, the value at zero, the value far above.
-        let at_zero = if wanted.iter().any(|w| w.at_zero.is_some()) {
-            EXACTLY
-        } else {
-            0.0
-        };
-        let mut matrix = Array2::zeros((rows, columns));
-        let mut right = Array2::zeros((rows, wanted.len()));
-        for (row, &omega) in omegas.iter().enumerate() {
-            matrix[[row, 0]] = 1.0;
+        let count = samples.len();
+        // Rows: real parts, imaginary parts, the value at zero.
+        let mut matrix = Array2::zeros((2 * count + 1, poles.len() + 1));
+        let mut right = Array2::zeros((2 * count + 1, functions.len()));
+        for (row, Sample { omega, weight }) in samples.iter().enumerate() {
+            matrix[[row, 0]] = *weight;
             for (column, pole) in poles.iter().enumerate() {
-                let term = 1.0 / Complex64::new(1.0, omega / pole);
+                let term = weight / Complex64::new(1.0, omega / pole);
                 matrix[[row, column + 1]] = term.re;
-                matrix[[omegas.len() + row, column + 1]] = term.im;
+                matrix[[count + row, column + 1]] = term.im;
             }
-            for (column, wanted) in wanted.iter().enumerate() {
-                right[[row, column]] = wanted.values[row].re;
-                right[[omegas.len() + row, column]] = wanted.values[row].im;
+            for (column, values) in functions.iter().enumerate() {
+                right[[row, column]] = weight * values[row].re;
+                right[[count + row, column]] = weight * values[row].im;
             }
         }
-        matrix.row_mut(rows - 2).fill(at_zero);
-        matrix[[rows - 1, 0]] = roughly;
-        for (column, wanted) in wanted.iter().enumerate() {
-            right[[rows - 2, column]] = at_zero * wanted.at_zero.unwrap_or(0.0);
-            right[[rows - 1, column]] = roughly * wanted.above;
+        if let Some(at_zero) = at_zero {
+            matrix.row_mut(2 * count).fill(EXACTLY);
+            right.row_mut(2 * count).fill(EXACTLY * at_zero);
         }
         let (solution, errors) = least_squares(matrix, right);
         let sums = solution.columns().into_iter().map(|column| Self {
@@ -194,15 +187,18 @@ mod tests {
             direct: 0.2,
             terms: vec![(1e7, 0.5), (1e8, -0.1), (1e9, 0.4)],
         };
-        let omegas: Vec<f64> = (0..40)
-            .map(|i| 1e6 * 10f64.powf(f64::from(i) / 10.0))
+        let samples: Vec<Sample> = (0..40)
+            .map(|i| Sample {
+                omega: 1e6 * 10f64.powf(f64::from(i) / 10.0),
+                weight: 1.0,
+            })
             .collect();
-        let wanted = Wanted {
-            values: omegas.iter().map(|&omega| truth.at(omega)).collect(),
-            at_zero: Some(1.0),
-            above: 0.2,
-        };
-        let (found, error) = Relaxations::fit(&[1e7, 1e8, 1e9], &omegas, &[wanted]).remove(0);
+        let values = samples
+            .iter()
+            .map(|sample| truth.at(sample.omega))
+            .collect();
+        let (found, error) =
+            Relaxations::fit(&[1e7, 1e8, 1e9], &samples, &[values], Some(1.0)).remove(0);
         assert!(error < 1e-9);
         assert!((found.direct - truth.direct).abs() < 1e-9);
         for (a, b) in found.terms.iter().zip(&truth.terms) {

@@ -11,8 +11,8 @@ const SETTLED: f64 = 1e-6;
 /// Losses are fitted from here on: what lies lower is not radiated, and its slow relaxations would keep a slow net
 /// from its rest.
 const LOWEST_LOSSY_HZ: f64 = 2e6;
-/// Most steps of one march, about a second's worth.
-const MOST_STEPS: usize = 30_000_000;
+/// Most steps of one march, some tenths of a second's worth.
+const MOST_STEPS: usize = 10_000_000;
 
 /// One settled period of a net.
 #[derive(Debug, Clone)]
@@ -194,16 +194,30 @@ impl<'a> March<'a> {
             residual: f64::INFINITY,
             settled: false,
         };
+        // What is on its way along a line was sent this many periods ago at most.
+        let longest_s = self
+            .network
+            .spans
+            .iter()
+            .map(|span| span.line.delay_s)
+            .fold(0.0, f64::max);
+        let memory = (longest_s / self.network.period_s).ceil().max(1.0) as usize;
         while report.periods < most_periods && !report.settled {
-            let change = self.one_period() / swing_v;
-            report.periods += 1;
+            let change = (0..memory).fold(0.0, |most, _| self.one_period().max(most)) / swing_v;
+            report.periods += memory;
             // Changes that shrink by a constant ratio leave this sum of all that are still to come.
             let ratio = (change / last_change).min(1.0 - 1e-9);
             report.residual = change.max(change * ratio / (1.0 - ratio));
-            report.settled = report.residual < SETTLED;
+            // A number that is none is not settled.
+            report.settled = report.residual < SETTLED && self.is_sound();
             last_change = change;
         }
         report
+    }
+
+    /// Whether the voltages are numbers still.
+    fn is_sound(&self) -> bool {
+        self.voltage_v.iter().all(|v| v.is_finite())
     }
 
     /// How much any voltage or wave still changes towards the ends of the two stretches.
@@ -333,8 +347,8 @@ fn pi_section(span: &Span, top_frequency_hz: f64) -> [Branch; 3] {
     const OF_TOP: f64 = 0.2;
     let line = &span.line;
     let resistance_ohm = line.loss.as_ref().map_or(0.0, |loss| {
-        let skin = loss.series_ohm_per_m(std::f64::consts::TAU * OF_TOP * top_frequency_hz);
-        (loss.dc_ohm_per_m + skin.re) * line.length_m
+        let omega = std::f64::consts::TAU * OF_TOP * top_frequency_hz;
+        loss.series_ohm_per_m(omega).re * line.length_m
     });
     let half = |from| Branch {
         from,
