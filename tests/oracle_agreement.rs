@@ -374,26 +374,15 @@ fn slow_clock_with_fast_edges() {
     );
 }
 
-/// A via and 10 pF short the driver's pin at 2.9 GHz, where nothing then damps the open line beside them. The march
-/// says that it does not settle; far above the band as that resonance is, no harmonic in it is the worse for it.
+/// A via and 10 pF short the driver's pin at 2.9 GHz, where nothing then damps the open line beside them: a march that
+/// only waits takes over 5000 periods.
 #[test]
-fn a_trap_beside_an_open_line_is_reported_and_does_no_harm() {
+fn a_trap_beside_an_open_line() {
     let trap = branch(vec![via(0.3e-9, 0.1e-12), receiver("a", 10e-12)]);
     let path = vec![trap, line(30.0, 6.3e-9)];
     let net = net("trap", driver(3.3, 30.0, 0.5e-9), 20e6, path);
-    let (report, spectrum) = engine(&net, 1e9);
-    assert!(!report.settled && report.residual > 1e-6, "{report:?}");
-    let exact: Vec<Complex64> = (spectrum.harmonics.clone())
-        .map(|number| oracle::harmonic(&net, number).driver_a)
-        .collect();
-    let said = compare_quantity(
-        &net,
-        "driver current, A",
-        &spectrum,
-        &spectrum.driver_a,
-        &exact,
-    );
-    assert!(said.is_empty(), "{said}");
+    assert!(engine(&net, 1e9).0.periods < 1000);
+    agree(&[net], 1e9);
 }
 
 /// Any part that does not branch. Every receiver has some resistance of its own: without it one net in ten

@@ -1,5 +1,6 @@
 //! A cluster of nodes joined by lumped parts, solved at one instant.
 
+use super::algebra::inverse;
 use super::clamp::Clamps;
 use ndarray::{Array1, Array2};
 
@@ -188,50 +189,11 @@ impl Cluster {
     }
 }
 
-/// Inverse of a small regular matrix, by Gauss-Jordan elimination with row pivoting.
-fn inverse(matrix: &Array2<f64>) -> Array2<f64> {
-    let n = matrix.nrows();
-    let mut left = matrix.clone();
-    let mut right = Array2::eye(n);
-    for column in 0..n {
-        let pivot = (column..n)
-            .max_by(|&a, &b| left[[a, column]].abs().total_cmp(&left[[b, column]].abs()))
-            .unwrap_or(column);
-        for k in 0..n {
-            left.swap([column, k], [pivot, k]);
-            right.swap([column, k], [pivot, k]);
-        }
-        let scale = 1.0 / left[[column, column]];
-        for k in 0..n {
-            left[[column, k]] *= scale;
-            right[[column, k]] *= scale;
-        }
-        for row in (0..n).filter(|&row| row != column) {
-            let factor = left[[row, column]];
-            for k in 0..n {
-                left[[row, k]] -= factor * left[[column, k]];
-                right[[row, k]] -= factor * right[[column, k]];
-            }
-        }
-    }
-    right
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
     use crate::board::{Clamp, HighClamp, ReceiverPart};
     use ndarray::array;
-
-    #[test]
-    fn inverse_undoes_the_matrix() {
-        let matrix = array![[0.0, 2.0, 1.0], [1.0, 3.0, -1.0], [4.0, 0.5, 2.0]];
-        let product = matrix.dot(&inverse(&matrix));
-        for ((row, column), value) in product.indexed_iter() {
-            let expected = f64::from(u8::from(row == column));
-            assert!((value - expected).abs() < 1e-12);
-        }
-    }
 
     #[test]
     fn two_clamped_nodes_balance_their_currents() {

@@ -60,6 +60,14 @@ impl Delay {
         change
     }
 
+    /// Shows every value that has a say in what is still to arrive.
+    pub(super) fn visit(&mut self, visit: &mut impl FnMut(&mut f64)) {
+        for steps in 1..=self.oldest_tap {
+            let place = self.back(steps);
+            visit(&mut self.samples[place]);
+        }
+    }
+
     /// What was sent in the period that has just ended.
     pub(super) fn last_period(&self) -> Vec<f64> {
         let start = self.back(self.period);

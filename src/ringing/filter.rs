@@ -1,6 +1,7 @@
 //! Causal filters: what loss makes of a wave, as a sum of relaxations.
 
-use ndarray::{Array2, ArrayView1};
+use super::algebra::least_squares;
+use ndarray::Array2;
 use num_complex::Complex64;
 
 /// H(s) = direct + sum of residue / (1 + s / pole) with real poles.
@@ -122,6 +123,15 @@ impl Filter {
         self.past
     }
 
+    /// Shows every value that has a say in what is still to come out.
+    pub(super) fn visit(&mut self, visit: &mut impl FnMut(&mut f64)) {
+        self.state
+            .as_flattened_mut()
+            .iter_mut()
+            .for_each(&mut *visit);
+        visit(&mut self.past);
+    }
+
     /// Takes the present input and goes on to the next step.
     pub(super) fn take(&mut self, input: f64) {
         let mut sums = [0.0; LANES];
@@ -133,48 +143,6 @@ impl Filter {
         }
         self.past = sums.iter().sum();
     }
-}
-
-/// The least-squares solutions of a tall system, one for each right-hand side, and the norms of what is left, by
-/// Householder reflections (Golub & Van Loan, Matrix Computations, section 5.3).
-fn least_squares(mut matrix: Array2<f64>, mut right: Array2<f64>) -> (Array2<f64>, Vec<f64>) {
-    let (rows, columns) = matrix.dim();
-    for k in 0..columns {
-        let norm = (k..rows)
-            .map(|i| matrix[[i, k]].powi(2))
-            .sum::<f64>()
-            .sqrt();
-        if norm == 0.0 {
-            continue;
-        }
-        let alpha = if matrix[[k, k]] > 0.0 { -norm } else { norm };
-        let mut v: Vec<f64> = (k..rows).map(|i| matrix[[i, k]]).collect();
-        v[0] -= alpha;
-        let scale = 2.0 / v.iter().map(|x| x * x).sum::<f64>();
-        for target in [&mut matrix, &mut right] {
-            for mut column in target.columns_mut() {
-                let dot: f64 = v.iter().enumerate().map(|(i, x)| x * column[k + i]).sum();
-                for (i, x) in v.iter().enumerate() {
-                    column[k + i] -= scale * dot * x;
-                }
-            }
-        }
-    }
-    let mut solution = Array2::zeros((columns, right.ncols()));
-    for of in 0..right.ncols() {
-        for k in (0..columns).rev() {
-            let known: f64 = (k + 1..columns)
-                .map(|j| matrix[[k, j]] * solution[[j, of]])
-                .sum();
-            solution[[k, of]] = (right[[k, of]] - known) / matrix[[k, k]];
-        }
-    }
-    let left = |column: ArrayView1<f64>| column.iter().skip(columns).map(|x| x * x).sum::<f64>();
-    let errors = right
-        .columns()
-        .into_iter()
-        .map(|column| left(column).sqrt());
-    (solution, errors.collect())
 }
 
 #[cfg(test)]

@@ -1,6 +1,7 @@
 //! The march: step by step until a whole period repeats.
 
 use super::cluster::{Cluster, Load};
+use super::extrapolate::extrapolated;
 use super::network::{Branch, BranchEnd, DRIVER_NODE, Network, Span};
 use super::steps::Pace;
 use super::travelling::{Model, TravellingLine};
@@ -8,9 +9,13 @@ use ndarray::Array2;
 
 /// Largest share of the swing by which the settled waveform may still be off.
 const SETTLED: f64 = 1e-6;
-/// Losses are fitted from here on: what lies lower is not radiated, and its slow relaxations would keep a slow net
-/// from its rest.
-const LOWEST_LOSSY_HZ: f64 = 2e6;
+/// Losses are fitted from here on: what lies lower is not radiated, and its slow relaxations would keep a net long
+/// from its settled state.
+const LOWEST_LOSSY_HZ: f64 = 20e6;
+/// Where a net has not settled after this many states, a period apart, the next is extrapolated from them.
+const STATES: usize = 6;
+/// How changes are taken to shrink where only one is known.
+const USUAL_RATIO: f64 = 0.9;
 /// Most steps of one march, some tenths of a second's worth.
 const MOST_STEPS: usize = 10_000_000;
 
@@ -186,7 +191,6 @@ impl<'a> March<'a> {
         let swing_v = self.network.source.swing_v();
         let marched_steps = self.pace.marched();
         let most_periods = (MOST_STEPS / marched_steps).max(4);
-        let mut last_change = f64::INFINITY;
         let mut report = MarchReport {
             steps_per_period: self.pace.total(),
             marched_steps,
@@ -202,17 +206,57 @@ impl<'a> March<'a> {
             .map(|span| span.line.delay_s)
             .fold(0.0, f64::max);
         let memory = (longest_s / self.network.period_s).ceil().max(1.0) as usize;
+        let mut states = vec![self.state()];
+        let mut last_change = None;
         while report.periods < most_periods && !report.settled {
             let change = (0..memory).fold(0.0, |most, _| self.one_period().max(most)) / swing_v;
             report.periods += memory;
-            // Changes that shrink by a constant ratio leave this sum of all that are still to come.
-            let ratio = (change / last_change).min(1.0 - 1e-9);
-            report.residual = change.max(change * ratio / (1.0 - ratio));
-            // A number that is none is not settled.
-            report.settled = report.residual < SETTLED && self.is_sound();
-            last_change = change;
+            states.push(self.state());
+            // The first change after a jump is the jump itself.
+            if states.len() > 2 {
+                // Changes that shrink by a constant ratio leave this sum of all that are still to come.
+                let ratio = last_change
+                    .map_or(USUAL_RATIO, |last| change / last)
+                    .min(1.0 - 1e-9);
+                report.residual = change.max(change * ratio / (1.0 - ratio));
+                // A number that is none is not settled.
+                report.settled = report.residual < SETTLED && self.is_sound();
+                last_change = Some(change);
+            }
+            if states.len() == STATES && !report.settled {
+                if let Some(state) = extrapolated(&states) {
+                    self.set_state(&state);
+                    last_change = None;
+                }
+                states = vec![self.state()];
+            }
         }
         report
+    }
+
+    /// Every value that has a say in what is still to come.
+    fn state(&mut self) -> Vec<f64> {
+        let mut state = Vec::new();
+        self.visit(&mut |value| state.push(*value));
+        state
+    }
+
+    fn set_state(&mut self, state: &[f64]) {
+        let mut values = state.iter();
+        self.visit(&mut |value| *value = *values.next().expect("a state of the same march"));
+    }
+
+    fn visit(&mut self, visit: &mut impl FnMut(&mut f64)) {
+        for line in &mut self.lines {
+            if let LineState::Waves(line) = line {
+                line.visit(visit);
+            }
+        }
+        for branch in &mut self.branches {
+            visit(&mut branch.current_a);
+            visit(&mut branch.inductor_v);
+            visit(&mut branch.capacitor_v);
+        }
     }
 
     /// Whether the voltages are numbers still.

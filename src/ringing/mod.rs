@@ -6,9 +6,11 @@
 //! the parts' trapezoidal companions and the clamps. The march goes on until a whole period repeats,
 //! so that the transform of that period has no leakage.
 
+mod algebra;
 mod clamp;
 mod cluster;
 mod delay;
+mod extrapolate;
 mod filter;
 mod march;
 mod network;
