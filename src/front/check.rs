@@ -1,22 +1,25 @@
 //! `ringfield check`: which nets of a board will likely fail.
 
 use std::path::{Path, PathBuf};
-use std::time::{Duration, Instant};
 
 use clap::Args;
-use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
 use rayon::prelude::*;
-use ringfield::board::{Board, Net, Reading, UnusableNet, read_board};
+use ringfield::board::{Board, CableRun, Reading, UnusableNet, read_board};
 use ringfield::limit::{Limit, LimitAt, default_limits, limits_at};
+use ringfield::radiation::Strongest;
 use ringfield::show::{
     self, CheckReport, check_json, check_table, harmonics_csv, march_table, spectrum_picture,
     waveform_csv, waveform_picture,
 };
-use ringfield::study::{CheckSetup, NetResult, Verdict, check_net, scan_band_hz};
+use ringfield::study::{
+    CheckSetup, NetResult, RungNet, Verdict, board_antenna, far_fields, judge, ring, scan_band_hz,
+    shared_frequencies,
+};
 use ringfield::text::Severity;
 
 use super::options::{self, SiteChoice, USUAL_DISTANCES_M};
 use super::output::Output;
+use super::progress::Progress;
 use super::{Ending, Refusal, input, output};
 
 /// The board, what it is laid against, and where the answers go.
@@ -224,30 +227,53 @@ fn setup(options: &Options, board: &Board, limits: Vec<Limit>) -> CheckSetup {
 
 /// Every net's result in the order of the board; several at a time.
 fn check_all(board: &Board, setup: &CheckSetup) -> Vec<NetResult> {
-    let started = Instant::now();
-    let bar =
-        ProgressBar::with_draw_target(Some(board.nets.len() as u64), ProgressDrawTarget::hidden());
-    if let Ok(style) = ProgressStyle::with_template("{bar:30} {pos} of {len} nets") {
-        bar.set_style(style);
-    }
-    let check = |net: &Net| {
-        let result = check_net(net, setup);
-        // Not worth showing for less. Draws nothing where standard error is no terminal.
-        if bar.is_hidden() && started.elapsed() > Duration::from_secs(1) {
-            bar.set_draw_target(ProgressDrawTarget::stderr());
+    let progress = Progress::new("nets", board.nets.len());
+    let rung: Vec<RungNet> = board
+        .nets
+        .par_iter()
+        .map(|net| progress.after(|| ring(net, board, setup)))
+        .collect();
+    drop(progress);
+
+    let antenna = board_antenna(board, setup.top_frequency_hz);
+    let shared = shared_frequencies(&rung, antenna.frequency_share());
+    let progress = Progress::new("frequencies", shared.len());
+    let at_frequency: Vec<Vec<Strongest>> = shared
+        .par_iter()
+        .map(|shared| progress.after(|| far_fields(antenna.as_ref(), &rung, shared)))
+        .collect();
+    drop(progress);
+
+    let mut of_nets: Vec<Vec<Strongest>> = vec![Vec::new(); rung.len()];
+    for (shared, fields) in shared.iter().zip(at_frequency) {
+        // Frequencies rise, so each net's harmonics come in order.
+        for (&(net, _), field) in shared.harmonics.iter().zip(fields) {
+            of_nets[net].push(field);
         }
-        bar.inc(1);
-        result
-    };
-    let results = board.nets.par_iter().map(check).collect();
-    bar.finish_and_clear();
-    results
+    }
+    let together: Vec<(RungNet, Vec<Strongest>)> = rung.into_iter().zip(of_nets).collect();
+    together
+        .into_par_iter()
+        .map(|(net, fields)| judge(net, &fields, setup))
+        .collect()
 }
 
 fn cable_remark(board: &Board) -> Option<String> {
     match board.cables.as_deref() {
         Some([]) => None,
-        Some(_) => Some("Cables are not yet in the figures, and they often dominate.".into()),
+        Some(_) if board.plane.is_none() => Some(
+            "Cables are not in the figures, since the file gives no `plane` for them to hang on, and \
+             they often dominate."
+                .into(),
+        ),
+        Some(cables) => {
+            let hung = cables.iter().any(|cable| cable.run != CableRun::Straight);
+            hung.then(|| {
+                "Cables that drop to the floor are taken as straight, and the floor is not in their \
+                 figures: expect several dB either way."
+                    .into()
+            })
+        }
         None => Some(
             "The file does not say what hangs on the board (`cables: []` says that nothing does), \
              and cables often dominate."

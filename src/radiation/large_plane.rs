@@ -13,7 +13,7 @@
 //! in strip-line", Proc. IEE 107C, 1960, 163-170) published for an open and a matched end.
 
 use super::peak::vertex;
-use super::{Antenna, LitSegment};
+use super::{Antenna, LitSegment, Strongest};
 use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
 use num_complex::Complex64;
 use std::f64::consts::{PI, TAU};
@@ -68,13 +68,34 @@ impl<'a> Traced<'a> {
 }
 
 impl Antenna for LargePlane {
-    fn strongest_v(&self, frequency_hz: f64, segments: &[LitSegment]) -> f64 {
-        let squared = match positions_on_one_line(segments) {
-            Some(positions_m) => strongest_of_straight(frequency_hz, segments, &positions_m),
-            None => strongest_of_any(frequency_hz, segments),
-        };
-        scale_ohm_per_m(frequency_hz) * squared.sqrt()
+    fn frequency_share(&self) -> f64 {
+        0.0
     }
+
+    fn strongest(&self, frequency_hz: f64, nets: &[Vec<LitSegment>]) -> Vec<Strongest> {
+        let scale = scale_ohm_per_m(frequency_hz);
+        let strongest = |segments: &Vec<LitSegment>| {
+            let peak = match positions_on_one_line(segments) {
+                Some(positions_m) => strongest_of_straight(frequency_hz, segments, &positions_m),
+                None => strongest_of_any(frequency_hz, segments),
+            };
+            Strongest {
+                total_v: scale * peak.squared.sqrt(),
+                loops_v: scale * peak.loops,
+                charges_v: scale * peak.charges,
+                cables_v: None,
+            }
+        };
+        nets.iter().map(strongest).collect()
+    }
+}
+
+/// The strongest direction, before the scale of the field.
+struct Peak {
+    squared: f64,
+    /// What the loops and the charges make of it.
+    loops: f64,
+    charges: f64,
 }
 
 /// w mu0 2 / 4 pi
@@ -175,7 +196,7 @@ fn positions_on_one_line(segments: &[LitSegment]) -> Option<Vec<f64>> {
 /// For a given u the squared field |A|^2 (1 + u^2) - 2 u Re(A B*) + s^2 (|B|^2 - |A|^2), A the loops, B
 /// the charges and s = sin(theta), is largest at an end of |u| <= s <= 1: along the plane, where
 /// it is |u A - B|^2, or straight over the line, where it is |A - u B|^2. Only u needs a search.
-fn strongest_of_straight(frequency_hz: f64, segments: &[LitSegment], positions_m: &[f64]) -> f64 {
+fn strongest_of_straight(frequency_hz: f64, segments: &[LitSegment], positions_m: &[f64]) -> Peak {
     let k = TAU * frequency_hz / LIGHT_SPEED_M_PER_S;
     let extent_m = segments
         .iter()
@@ -186,7 +207,7 @@ fn strongest_of_straight(frequency_hz: f64, segments: &[LitSegment], positions_m
         .iter()
         .map(|lit| Traced::new(frequency_hz, lit))
         .collect();
-    let squared = |u: f64| {
+    let moments = |u: f64| {
         let mut sum = Moments::default();
         for (traced, position_m) in traced.iter().zip(positions_m) {
             let start = Complex64::cis(k * u * position_m);
@@ -194,23 +215,47 @@ fn strongest_of_straight(frequency_hz: f64, segments: &[LitSegment], positions_m
             sum.loops += start * loops;
             sum.charges += start * charges;
         }
-        let along_plane = (u * sum.loops - sum.charges).norm_sqr();
-        along_plane.max((sum.loops - u * sum.charges).norm_sqr())
+        sum
+    };
+    let both = |u: f64| {
+        let Moments { loops, charges } = moments(u);
+        [
+            (u * loops - charges).norm_sqr(),
+            (loops - u * charges).norm_sqr(),
+        ]
     };
     let steps = 16 + (k * extent_m * 4.0) as usize;
-    let step = 2.0 / steps as f64;
+    let at = |i: usize| -1.0 + 2.0 * i as f64 / steps as f64;
     let samples: Vec<f64> = (0..=steps)
-        .map(|i| squared(-1.0 + i as f64 * step))
+        .map(|i| {
+            let [along_plane, over_line] = both(at(i));
+            along_plane.max(over_line)
+        })
         .collect();
-    let peak = samples
-        .windows(3)
-        .map(|w| vertex(w[0], w[1], w[2]))
-        .fold(0.0, f64::max);
-    peak.max(samples[0]).max(samples[steps])
+    let best = (0..=steps)
+        .max_by(|&a, &b| samples[a].total_cmp(&samples[b]))
+        .unwrap_or(0);
+    let squared = match (best.checked_sub(1), samples.get(best + 1)) {
+        (Some(before), Some(&after)) => vertex(samples[before], samples[best], after),
+        _ => samples[best],
+    };
+    let u = at(best);
+    let Moments { loops, charges } = moments(u);
+    let [along_plane, over_line] = both(u);
+    let (of_loops, of_charges) = if along_plane >= over_line {
+        (u.abs(), 1.0)
+    } else {
+        (1.0, u.abs())
+    };
+    Peak {
+        squared,
+        loops: of_loops * loops.norm(),
+        charges: of_charges * charges.norm(),
+    }
 }
 
 /// The largest squared field of segments in any place, over a grid of directions on the half sphere.
-fn strongest_of_any(frequency_hz: f64, segments: &[LitSegment]) -> f64 {
+fn strongest_of_any(frequency_hz: f64, segments: &[LitSegment]) -> Peak {
     let k = TAU * frequency_hz / LIGHT_SPEED_M_PER_S;
     let mut extent_m: f64 = 0.0;
     for a in segments {
@@ -257,5 +302,25 @@ fn strongest_of_any(frequency_hz: f64, segments: &[LitSegment]) -> f64 {
             squared(theta + step, phi),
         )
     };
-    around + upward - value
+    let parts = |loops: bool| {
+        let traced: Vec<Traced> = segments
+            .iter()
+            .map(|lit| {
+                let mut traced = Traced::new(frequency_hz, lit);
+                if loops {
+                    traced.charge_scale = Complex64::ZERO;
+                } else {
+                    traced.loop_scale = Complex64::ZERO;
+                }
+                traced
+            })
+            .collect();
+        let [e_theta, e_phi] = toward(frequency_hz, &traced, theta, phi);
+        (e_theta.norm_sqr() + e_phi.norm_sqr()).sqrt()
+    };
+    Peak {
+        squared: around + upward - value,
+        loops: parts(true),
+        charges: parts(false),
+    }
 }

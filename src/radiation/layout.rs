@@ -1,6 +1,6 @@
 //! Where a net lies on the board: its radiating lines, cut into straight segments.
 
-use crate::board::Along;
+use crate::board::{Along, Net, Plane};
 use crate::line::Place;
 use crate::ringing::Network;
 
@@ -47,18 +47,21 @@ impl Layout {
     /// Lays a net out. A line with points lies on them; one without continues, straight on, what is
     /// before it, so that a branch lies beside the path it leaves. The fields of lines side by side add
     /// up, which makes that the careful choice.
-    pub fn of(network: &Network, along: Along) -> Self {
+    ///
+    /// On a plane of known size a path without points lies straight and centred, or at the net's distance from the
+    /// nearest edge; `along` is which way.
+    pub fn of(network: &Network, net: &Net, plane: Option<&Plane>) -> Self {
         let mut layout = Self {
             segments: Vec::new(),
             buried_m: 0.0,
             total_m: 0.0,
         };
-        let direction = match along {
+        let direction = match net.along {
             Along::Length => [1.0, 0.0],
             Along::Width => [0.0, 1.0],
         };
         let origin = Tip {
-            at_m: [0.0, 0.0],
+            at_m: plane.map_or([0.0; 2], |plane| start_m(network, net, plane)),
             direction,
         };
         let mut tips: Vec<Tip> = Vec::with_capacity(network.spans.len());
@@ -111,12 +114,62 @@ impl Layout {
         layout
     }
 
+    /// What is doubtful about where the net lies on its plane.
+    pub fn place_warning(&self, plane: &Plane) -> Option<String> {
+        /// A trace this many heights from the edge and farther sees a plane on both sides.
+        const HEIGHTS: f64 = 5.0;
+        let sides_m = [plane.length_m, plane.width_m];
+        let nearest_m = |at_m: [f64; 2]| {
+            let [x, y] = [0, 1].map(|axis| at_m[axis].min(sides_m[axis] - at_m[axis]));
+            x.min(y)
+        };
+        let nearness = |segment: &Segment| {
+            let end_m = step(segment.start_m, segment.direction, segment.length_m);
+            (
+                nearest_m(segment.start_m).min(nearest_m(end_m)),
+                segment.height_m,
+            )
+        };
+        let of_all: Vec<(f64, f64)> = self.segments.iter().map(nearness).collect();
+        if of_all.iter().any(|(nearest_m, _)| *nearest_m < 0.0) {
+            Some(
+                "does not fit on the plane as a straight line: give the points of its traces"
+                    .into(),
+            )
+        } else if of_all
+            .iter()
+            .any(|(nearest_m, height_m)| *nearest_m < HEIGHTS * height_m)
+        {
+            Some(
+                "runs within a few heights of the plane's edge, where its field is less sure"
+                    .into(),
+            )
+        } else {
+            None
+        }
+    }
+
     /// Sum over the segments of height times length: the area between the net and its plane.
     pub fn loop_area_m2(&self) -> f64 {
         self.segments
             .iter()
             .map(|segment| segment.height_m * segment.length_m)
             .sum()
+    }
+}
+
+/// Where a straight path starts on its plane.
+fn start_m(network: &Network, net: &Net, plane: &Plane) -> [f64; 2] {
+    let mut tips_m: Vec<f64> = Vec::with_capacity(network.spans.len());
+    for span in &network.spans {
+        tips_m.push(span.after.map_or(0.0, |before| tips_m[before]) + span.line.length_m);
+    }
+    let extent_m = tips_m.into_iter().fold(0.0, f64::max);
+    let along = |side_m: f64| (side_m - extent_m) / 2.0;
+    let across = |side_m: f64| net.edge_distance_m.unwrap_or(side_m / 2.0);
+    match net.along {
+        Along::Length => [along(plane.length_m), across(plane.width_m)],
+        Along::Width => [across(plane.length_m), along(plane.width_m)],
     }
 }
 

@@ -6,15 +6,19 @@
 //! [`Antenna`]. A net is then a sum over its lines of charge times electric field and current times
 //! magnetic field.
 
+mod far_field;
 mod large_plane;
 mod layout;
 mod loop_area;
 mod peak;
+pub mod plate;
+mod plate_antenna;
 mod site;
 
 pub use large_plane::{LargePlane, field_toward};
 pub use layout::{Layout, Segment};
 pub use loop_area::loop_area_v_per_m;
+pub use plate_antenna::PlateAntenna;
 pub use site::{FLOOR_ABSORBED_ABOVE_HZ, Site, TABLE_HEIGHT_M, two_ray_factors};
 
 use crate::LIGHT_SPEED_M_PER_S;
@@ -39,33 +43,43 @@ pub struct LitSegment<'a> {
     pub inward_v: Complex64,
 }
 
-/// What stands between a net and the receiver's antenna: the board's plane, whatever hangs on it.
-pub trait Antenna {
-    /// The largest field over all directions times the distance, in volts rms, far away in free space.
-    fn strongest_v(&self, frequency_hz: f64, segments: &[LitSegment]) -> f64;
+/// A net's far field in free space towards its strongest direction, times the distance; volts rms.
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+pub struct Strongest {
+    /// The field.
+    pub total_v: f64,
+    /// What the loops between traces and plane make of it, without cables.
+    pub loops_v: f64,
+    /// What the charged traces make of it, without cables.
+    pub charges_v: f64,
+    /// What the cables add: the difference to the field without them; `None` without cables.
+    pub cables_v: Option<f64>,
 }
 
-/// The largest far field of each harmonic over all directions in free space, times the distance;
-/// volts rms.
-pub fn strongest_v(
-    antenna: &impl Antenna,
+/// What stands between nets and the receiver's antenna: the board's plane, whatever hangs on it.
+pub trait Antenna: Sync {
+    /// How far apart frequencies may lie, as a share of themselves, to be taken as one.
+    fn frequency_share(&self) -> f64;
+
+    /// The strongest far fields of several nets at one frequency.
+    fn strongest(&self, frequency_hz: f64, nets: &[Vec<LitSegment>]) -> Vec<Strongest>;
+}
+
+/// The segments of a net, with the waves on them at the harmonic at a place of its spectrum.
+pub fn lit_segments<'a>(
     network: &Network,
-    layout: &Layout,
+    layout: &'a Layout,
     spectrum: &Spectrum,
-) -> Vec<f64> {
-    (0..spectrum.len())
-        .map(|place| {
-            let frequency_hz = spectrum.frequency_hz(place);
-            let waves: Vec<WaveOnLine> = network
-                .spans
-                .iter()
-                .map(|span| span.line.wave_at(TAU * frequency_hz))
-                .collect();
-            let lit = |segment| lit(segment, network, spectrum, place, &waves);
-            let segments: Vec<LitSegment> = layout.segments.iter().map(lit).collect();
-            antenna.strongest_v(frequency_hz, &segments)
-        })
-        .collect()
+    place: usize,
+) -> Vec<LitSegment<'a>> {
+    let omega = TAU * spectrum.frequency_hz(place);
+    let waves: Vec<WaveOnLine> = network
+        .spans
+        .iter()
+        .map(|span| span.line.wave_at(omega))
+        .collect();
+    let lit = |segment| lit(segment, network, spectrum, place, &waves);
+    layout.segments.iter().map(lit).collect()
 }
 
 fn lit<'a>(

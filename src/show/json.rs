@@ -84,6 +84,7 @@ struct WorstEntry<'a> {
     field_dbuv_per_m: f64,
     limit_dbuv_per_m: f64,
     margin_db: f64,
+    mainly: &'static str,
 }
 
 #[derive(Serialize)]
@@ -100,6 +101,8 @@ struct FieldEntry {
     distance_m: f64,
     field_dbuv_per_m: Option<f64>,
     loop_area_dbuv_per_m: Option<f64>,
+    loops_dbuv_per_m: Option<f64>,
+    charges_dbuv_per_m: Option<f64>,
     cable_dbuv_per_m: Option<f64>,
 }
 
@@ -149,6 +152,7 @@ fn net_entry(net: &NetResult) -> NetEntry<'_> {
             field_dbuv_per_m: worst.field_dbuv_per_m,
             limit_dbuv_per_m: worst.limit_dbuv_per_m,
             margin_db: worst.margin_db,
+            mainly: worst.mechanism.as_str(),
         }),
         harmonics: net
             .harmonics
@@ -178,6 +182,8 @@ fn harmonic_entry<'a>(harmonic: &Harmonic, signal: &'a Signal) -> HarmonicEntry<
                 distance_m: field.distance_m,
                 field_dbuv_per_m: field.field_dbuv_per_m,
                 loop_area_dbuv_per_m: field.loop_area_dbuv_per_m,
+                loops_dbuv_per_m: field.loops_dbuv_per_m,
+                charges_dbuv_per_m: field.charges_dbuv_per_m,
                 cable_dbuv_per_m: field.cable_dbuv_per_m,
             })
             .collect(),
@@ -256,6 +262,7 @@ mod tests {
                 "harmonic",
                 "limit",
                 "limit_dbuv_per_m",
+                "mainly",
                 "margin_db"
             ]
         );
@@ -275,9 +282,11 @@ mod tests {
             keys(&harmonic["fields"][0]),
             [
                 "cable_dbuv_per_m",
+                "charges_dbuv_per_m",
                 "distance_m",
                 "field_dbuv_per_m",
-                "loop_area_dbuv_per_m"
+                "loop_area_dbuv_per_m",
+                "loops_dbuv_per_m"
             ]
         );
         let receiver = &net["signal"]["receivers"][0];

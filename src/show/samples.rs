@@ -5,7 +5,8 @@ use crate::limit::{Band, Detector, Limit, LimitAt, limits_at};
 use crate::radiation::Site;
 use crate::ringing::{MarchReport, Pace, SettledWaveform, Stretch};
 use crate::study::{
-    ClampSignal, FieldReading, Harmonic, NetResult, ReceiverSignal, Signal, Verdict, Worst,
+    ClampSignal, FieldReading, Harmonic, Mechanism, NetResult, ReceiverSignal, Signal, Verdict,
+    Worst,
 };
 
 use super::CheckReport;
@@ -127,6 +128,7 @@ pub(super) fn worst(margin_db: f64) -> Option<Worst> {
         field_dbuv_per_m: 43.5 - margin_db,
         limit_dbuv_per_m: 43.5,
         margin_db,
+        mechanism: Mechanism::Charges,
     })
 }
 
@@ -177,6 +179,8 @@ fn harmonic(number: usize, clock_hz: f64, level_dbuv_per_m: f64) -> Harmonic {
                     distance_m: *distance_m,
                     field_dbuv_per_m: Some(field),
                     loop_area_dbuv_per_m: Some(field - 7.0),
+                    loops_dbuv_per_m: Some(field - 6.0),
+                    charges_dbuv_per_m: Some(field - 5.0),
                     cable_dbuv_per_m: None,
                 }
             })

@@ -10,7 +10,7 @@ use super::{CheckReport, LABORATORY, NOTICE, words};
 use crate::limit::LimitAt;
 use crate::study::{NetResult, Verdict};
 
-const HEADER: [&str; 10] = [
+const HEADER: [&str; 11] = [
     "net",
     "verdict",
     "margin\ndB",
@@ -20,6 +20,7 @@ const HEADER: [&str; 10] = [
     "field\ndBµV/m",
     "limit\ndBµV/m",
     "distance",
+    "mainly\nfrom",
     "limit line",
 ];
 
@@ -106,6 +107,7 @@ fn row(net: &NetResult) -> Vec<String> {
             format!("{:.1}", worst.field_dbuv_per_m),
             format!("{:.1}", worst.limit_dbuv_per_m),
             words::distance(worst.distance_m),
+            worst.mechanism.as_str().to_string(),
             worst.limit.clone(),
         ]),
         None => cells.extend(std::iter::repeat_n("-".to_string(), HEADER.len() - 2)),

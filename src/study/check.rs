@@ -1,12 +1,14 @@
 //! Will a net likely fail a scan?
 
+use super::Mechanism;
 use super::signal::signal;
 use super::verdict::{Verdict, chance_of_failing, total_sigma_db};
 use super::{FieldReading, Harmonic, NetResult, Worst};
-use crate::board::Net;
+use crate::board::{Board, Net};
 use crate::limit::{Limit, LimitAt, limits_at};
 use crate::radiation::{
-    LargePlane, Layout, Site, loop_area_v_per_m, near_field_factor, strongest_v,
+    Antenna, LargePlane, Layout, LitSegment, PlateAntenna, Site, Strongest, lit_segments,
+    loop_area_v_per_m, near_field_factor,
 };
 use crate::ringing::{Network, Settled, settle};
 use crate::spectrum::{Spectrum, spectrum};
@@ -28,8 +30,19 @@ pub struct CheckSetup {
     pub model_sigma_db: f64,
 }
 
-/// Ringing, spectrum, field and margins of one net.
-pub fn check_net(net: &Net, setup: &CheckSetup) -> NetResult {
+/// A net that has rung and settled, ready to be laid on an antenna.
+#[derive(Debug, Clone)]
+pub struct RungNet {
+    name: String,
+    network: Network,
+    settled: Settled,
+    spectrum: Spectrum,
+    layout: Layout,
+    warnings: Vec<String>,
+}
+
+/// Ringing and spectrum of one net.
+pub fn ring(net: &Net, board: &Board, setup: &CheckSetup) -> RungNet {
     let network = Network::of(net);
     let settled = settle(&network, setup.top_frequency_hz);
     let spectrum = spectrum(
@@ -38,52 +51,130 @@ pub fn check_net(net: &Net, setup: &CheckSetup) -> NetResult {
         setup.lowest_frequency_hz,
         setup.top_frequency_hz,
     );
-    let layout = Layout::of(&network, net.along);
-    let harmonics = harmonics(&network, &layout, &spectrum, setup);
+    let layout = Layout::of(&network, net, board.plane.as_ref());
+    let mut warnings = warnings(&network, &layout, &settled, &spectrum);
+    warnings.extend(board.plane.and_then(|plane| layout.place_warning(&plane)));
+    RungNet {
+        name: net.name.clone(),
+        network,
+        settled,
+        spectrum,
+        layout,
+        warnings,
+    }
+}
+
+/// The antenna that a board is: its plane with its cables, or without a plane's size, a large plane.
+pub fn board_antenna(board: &Board, top_frequency_hz: f64) -> Box<dyn Antenna> {
+    match &board.plane {
+        Some(plane) => {
+            let cables = board.cables.as_deref().unwrap_or_default();
+            Box::new(PlateAntenna::new(plane, cables, top_frequency_hz))
+        }
+        None => Box::new(LargePlane),
+    }
+}
+
+/// One frequency with the nets that have a harmonic there or very near, so that the antenna is worked out once for
+/// all.
+#[derive(Debug, Clone, PartialEq)]
+pub struct SharedFrequency {
+    /// The frequency.
+    pub frequency_hz: f64,
+    /// Number of a net and place of the harmonic in its spectrum.
+    pub harmonics: Vec<(usize, usize)>,
+}
+
+/// All frequencies of some nets, rising. Those that lie closer together than `share` of themselves are one.
+pub fn shared_frequencies(nets: &[RungNet], share: f64) -> Vec<SharedFrequency> {
+    let mut all: Vec<(f64, usize, usize)> = Vec::new();
+    for (number, net) in nets.iter().enumerate() {
+        let places = 0..net.spectrum.len();
+        all.extend(places.map(|place| (net.spectrum.frequency_hz(place), number, place)));
+    }
+    all.sort_by(|a, b| a.0.total_cmp(&b.0));
+    // Multiples of two clocks may differ by a rounding.
+    let together =
+        |a: &(f64, usize, usize), b: &(f64, usize, usize)| b.0 <= a.0 * (1.0 + share.max(1e-12));
+    let mut shared = Vec::new();
+    let mut rest = all.as_slice();
+    while let Some(first) = rest.first() {
+        let count = rest
+            .iter()
+            .take_while(|other| together(first, other))
+            .count();
+        let (group, after) = rest.split_at(count);
+        rest = after;
+        shared.push(SharedFrequency {
+            frequency_hz: (first.0 * group[count - 1].0).sqrt(),
+            harmonics: group.iter().map(|&(_, net, place)| (net, place)).collect(),
+        });
+    }
+    shared
+}
+
+/// The strongest far field of every harmonic at one frequency, in the order of its list.
+pub fn far_fields(
+    antenna: &dyn Antenna,
+    nets: &[RungNet],
+    shared: &SharedFrequency,
+) -> Vec<Strongest> {
+    let lit: Vec<Vec<LitSegment>> = shared
+        .harmonics
+        .iter()
+        .map(|&(number, place)| {
+            let net = &nets[number];
+            lit_segments(&net.network, &net.layout, &net.spectrum, place)
+        })
+        .collect();
+    antenna.strongest(shared.frequency_hz, &lit)
+}
+
+/// Fields and margins of one net, from the strongest far field of each of its harmonics.
+pub fn judge(net: RungNet, far_fields: &[Strongest], setup: &CheckSetup) -> NetResult {
+    let harmonics = harmonics(&net, far_fields, setup);
     let worst = worst_reading(&harmonics, setup);
     let chance = worst
         .as_ref()
         .map(|worst| chance_of_failing(worst.margin_db, total_sigma_db(setup.model_sigma_db)));
     NetResult {
-        name: net.name.clone(),
-        clock_hz: net.clock_hz,
+        name: net.name,
+        clock_hz: net.spectrum.clock_hz,
         verdict: chance.map_or(Verdict::NotJudged, Verdict::of),
         chance_of_failing: chance,
         worst,
         harmonics,
-        signal: signal(&network, &settled),
-        march: settled.report,
-        warnings: warnings(&network, &layout, &settled, &spectrum),
-        waveform: settled.waveform,
+        signal: signal(&net.network, &net.settled),
+        march: net.settled.report,
+        warnings: net.warnings,
+        waveform: net.settled.waveform,
     }
 }
 
 /// The harmonics with their fields at every distance.
-fn harmonics(
-    network: &Network,
-    layout: &Layout,
-    spectrum: &Spectrum,
-    setup: &CheckSetup,
-) -> Vec<Harmonic> {
-    let strongest_v = strongest_v(&LargePlane, network, layout, spectrum);
-    let area_m2 = layout.loop_area_m2();
-    strongest_v
-        .into_iter()
+fn harmonics(net: &RungNet, far_fields: &[Strongest], setup: &CheckSetup) -> Vec<Harmonic> {
+    let spectrum = &net.spectrum;
+    let area_m2 = net.layout.loop_area_m2();
+    far_fields
+        .iter()
         .enumerate()
-        .map(|(place, strongest_v)| {
+        .map(|(place, strongest)| {
             let frequency_hz = spectrum.frequency_hz(place);
             let driver_current_a = spectrum.driver_a[place].norm();
             let reading = |&distance_m: &f64| {
-                let field_v_per_m = strongest_v / distance_m
-                    * near_field_factor(frequency_hz, distance_m)
-                    * setup.site.factor(frequency_hz, distance_m);
+                let at_distance = near_field_factor(frequency_hz, distance_m)
+                    * setup.site.factor(frequency_hz, distance_m)
+                    / distance_m;
+                let level = |far_field_v: f64| level_dbuv_per_m(far_field_v * at_distance);
                 let loop_v_per_m =
                     loop_area_v_per_m(frequency_hz, area_m2, driver_current_a, distance_m);
                 FieldReading {
                     distance_m,
-                    field_dbuv_per_m: level_dbuv_per_m(field_v_per_m),
+                    field_dbuv_per_m: level(strongest.total_v),
                     loop_area_dbuv_per_m: level_dbuv_per_m(loop_v_per_m),
-                    cable_dbuv_per_m: None,
+                    loops_dbuv_per_m: level(strongest.loops_v),
+                    charges_dbuv_per_m: level(strongest.charges_v),
+                    cable_dbuv_per_m: strongest.cables_v.and_then(level),
                 }
             };
             Harmonic {
@@ -137,6 +228,7 @@ fn worst_reading(harmonics: &[Harmonic], setup: &CheckSetup) -> Option<Worst> {
                         field_dbuv_per_m,
                         limit_dbuv_per_m,
                         margin_db,
+                        mechanism: Mechanism::ruling(reading),
                     });
                 }
             }

@@ -6,7 +6,10 @@ mod signal;
 mod verdict;
 
 pub use band::scan_band_hz;
-pub use check::{CheckSetup, check_net};
+pub use check::{
+    CheckSetup, RungNet, SharedFrequency, board_antenna, far_fields, judge, ring,
+    shared_frequencies,
+};
 pub use signal::{ClampSignal, ReceiverSignal, Signal};
 pub use verdict::{
     INSTRUMENT_SIGMA_DB, MODEL_SIGMA_DB, Verdict, chance_of_failing, total_sigma_db,
@@ -59,6 +62,44 @@ pub struct Worst {
     pub limit_dbuv_per_m: f64,
     /// Limit less estimate.
     pub margin_db: f64,
+    /// What makes most of the field.
+    pub mechanism: Mechanism,
+}
+
+/// What a field is made of.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Mechanism {
+    /// The loops between traces and plane.
+    Loops,
+    /// The charged traces.
+    Charges,
+    /// The cables.
+    Cables,
+}
+
+impl Mechanism {
+    /// What makes most of a reading.
+    fn ruling(reading: &FieldReading) -> Self {
+        let parts = [
+            (Self::Loops, reading.loops_dbuv_per_m),
+            (Self::Charges, reading.charges_dbuv_per_m),
+            (Self::Cables, reading.cable_dbuv_per_m),
+        ];
+        let level = |part: &(Self, Option<f64>)| part.1.unwrap_or(f64::NEG_INFINITY);
+        let most = parts
+            .into_iter()
+            .max_by(|a, b| level(a).total_cmp(&level(b)));
+        most.map_or(Self::Loops, |part| part.0)
+    }
+
+    /// As shown to the user.
+    pub fn as_str(self) -> &'static str {
+        match self {
+            Self::Loops => "loops",
+            Self::Charges => "charged traces",
+            Self::Cables => "cables",
+        }
+    }
 }
 
 /// One harmonic of the settled waveform and what it radiates. All levels are rms.
@@ -85,6 +126,10 @@ pub struct FieldReading {
     pub field_dbuv_per_m: Option<f64>,
     /// The plain loop-area figure; `None` where the loop has no area.
     pub loop_area_dbuv_per_m: Option<f64>,
+    /// What the loops between traces and plane make of it, without cables.
+    pub loops_dbuv_per_m: Option<f64>,
+    /// What the charged traces make of it, without cables.
+    pub charges_dbuv_per_m: Option<f64>,
     /// What the cables add; `None` where they are not in the figure.
     pub cable_dbuv_per_m: Option<f64>,
 }

@@ -1,0 +1,326 @@
+//! The integral equation: geometry once, a factored matrix per frequency.
+//!
+//! Along each branch the incident field drives the current against the vector potential of all currents
+//! and the difference of its nodes' potentials; the charges are what the currents leave behind. With g
+//! the mean of 1/R between two pieces, g exp(-jk/g) is the mean of the retarded exp(-jkR)/R: the mean
+//! distance 1/g keeps the -jk of a piece on itself, by which it radiates, and is the distance between
+//! centres far away.
+
+use super::axis::Axis;
+use super::kernel::{Piece, difference, dot, mean_inverse_distance_per_m, norm};
+use super::mesh::{Branch, Mesh, centre_m};
+use super::solve::{Factors, Symmetric};
+use super::surface::{Currents, Probe};
+use super::{Plate, Wire};
+use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
+use num_complex::Complex64;
+use std::f64::consts::{PI, TAU};
+
+/// Where a branch lies.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct BranchPlace {
+    /// Its middle, metres.
+    pub centre_m: [f64; 3],
+    /// From its start to its end, metres.
+    pub along_m: [f64; 3],
+}
+
+/// Plate and wires, with all that does not depend on the frequency.
+#[derive(Debug, Clone)]
+pub struct Structure {
+    pub(super) mesh: Mesh,
+    into_cells: Vec<Vec<(usize, f64)>>,
+    /// Between nodes, the lower triangle by rows.
+    nodes: Vec<Pair>,
+    /// Between branches, with the scalar product of their lengths; nothing between perpendicular ones.
+    branches: Vec<Option<(Pair, f64)>>,
+}
+
+/// Two nodes or two branches.
+#[derive(Debug, Clone, Copy)]
+struct Pair {
+    mean_inverse_per_m: f64,
+    centres_apart_m: f64,
+}
+
+impl Pair {
+    fn new(a: &[(f64, Piece)], b: &[(f64, Piece)]) -> Self {
+        let mut mean_inverse_per_m = 0.0;
+        for (share, piece) in a {
+            for (other_share, other) in b {
+                let mean = mean_inverse_distance_per_m(piece, other);
+                mean_inverse_per_m += share * other_share * mean;
+            }
+        }
+        Self {
+            mean_inverse_per_m,
+            centres_apart_m: norm(difference(centre_m(a), centre_m(b))),
+        }
+    }
+
+    /// Mean of exp(-jkR)/R.
+    fn retarded_per_m(&self, k: f64) -> Complex64 {
+        let Self {
+            mean_inverse_per_m,
+            centres_apart_m,
+        } = *self;
+        let turn = k * centres_apart_m;
+        if turn < 1e-6 {
+            return Complex64::new(mean_inverse_per_m, -k);
+        }
+        mean_inverse_per_m + (Complex64::cis(-turn) - 1.0) / centres_apart_m
+    }
+}
+
+impl Structure {
+    /// Cuts up the conductors finely enough for a highest frequency and takes their static integrals.
+    ///
+    /// # Panics
+    /// If an attached wire does not begin on an edge of the plate.
+    pub fn new(plate: Plate, wires: &[Wire], top_frequency_hz: f64) -> Self {
+        let wavelength_m = LIGHT_SPEED_M_PER_S / top_frequency_hz;
+        let sides_m = [plate.length_m, plate.width_m];
+        let longer_m = plate.length_m.max(plate.width_m);
+        let cells = [0, 1].map(|axis| {
+            let side_m: f64 = sides_m[axis];
+            let share = CELLS * side_m / longer_m;
+            // The widest cell, in the middle, is pi / 2 times the mean.
+            let short = PI / 2.0 * side_m / (CELL_WAVELENGTHS * wavelength_m);
+            let cells = share.max(short).max(FEWEST_CELLS).ceil() as usize;
+            let roots_m: Vec<f64> = wires
+                .iter()
+                .filter(|wire| wire.attached)
+                .filter_map(|wire| {
+                    let (across, _) = plate.edge_at(wire.points_m[0])?;
+                    (across != axis).then_some(wire.points_m[0][axis])
+                })
+                .collect();
+            Axis::fitted(side_m, cells, &roots_m).cells
+        });
+        let segment_m = SEGMENT_M.min(SEGMENT_WAVELENGTHS * wavelength_m);
+        Self::with_mesh(plate, wires, cells, segment_m)
+    }
+
+    /// The same with a given number of cells along x and y and a longest wire segment.
+    ///
+    /// # Panics
+    /// If an attached wire does not begin on an edge of the plate.
+    pub fn with_mesh(plate: Plate, wires: &[Wire], cells: [usize; 2], segment_m: f64) -> Self {
+        let sides_m = [plate.length_m, plate.width_m];
+        let axes = [0, 1].map(|axis| Axis {
+            length_m: sides_m[axis],
+            cells: cells[axis],
+        });
+        Self::of(Mesh::new(axes, wires, segment_m))
+    }
+
+    pub(super) fn of(mesh: Mesh) -> Self {
+        let mut nodes = Vec::new();
+        for (row, a) in mesh.nodes.iter().enumerate() {
+            nodes.extend(mesh.nodes[..=row].iter().map(|b| Pair::new(a, b)));
+        }
+        let mut branches = Vec::new();
+        for (row, a) in mesh.branches.iter().enumerate() {
+            branches.extend(mesh.branches[..=row].iter().map(|b| between_branches(a, b)));
+        }
+        Self {
+            into_cells: mesh.flows_into_cells(),
+            mesh,
+            nodes,
+            branches,
+        }
+    }
+
+    /// Number of unknown currents.
+    pub fn unknowns(&self) -> usize {
+        self.mesh.branches.len()
+    }
+
+    /// Number of cells along x and y.
+    pub fn cells(&self) -> [usize; 2] {
+        [self.mesh.axes[0].cells, self.mesh.axes[1].cells]
+    }
+
+    /// Static capacitance to infinity, all conductors at one potential; farads.
+    pub fn capacitance_f(&self) -> f64 {
+        let order = self.mesh.nodes.len();
+        let mut matrix = Symmetric::zeros(order);
+        let mut entries = self.nodes.iter();
+        for row in 0..order {
+            for (column, pair) in entries.by_ref().take(row + 1).enumerate() {
+                matrix.set(row, column, pair.mean_inverse_per_m.into());
+            }
+        }
+        let mut charges = [vec![Complex64::ONE; order]];
+        matrix.factor().solve(&mut charges);
+        let sum: f64 = charges[0].iter().map(|charge| charge.re).sum();
+        // 4 pi eps0
+        4.0 * PI / (MU0_H_PER_M * LIGHT_SPEED_M_PER_S.powi(2)) * sum
+    }
+
+    /// The equations of one frequency, factored.
+    pub fn at(&self, frequency_hz: f64) -> Solved<'_> {
+        Solved {
+            structure: self,
+            frequency_hz,
+            factors: self.matrix(frequency_hz).factor(),
+        }
+    }
+
+    /// The equations, divided by j w mu0 / 4 pi.
+    fn matrix(&self, frequency_hz: f64) -> Symmetric {
+        let k = TAU * frequency_hz / LIGHT_SPEED_M_PER_S;
+        let nodes = self.mesh.nodes.len();
+        let mut potentials = vec![Complex64::ZERO; nodes * nodes];
+        let mut entries = self.nodes.iter();
+        for row in 0..nodes {
+            for (column, pair) in entries.by_ref().take(row + 1).enumerate() {
+                let potential = pair.retarded_per_m(k) / (k * k);
+                potentials[row * nodes + column] = potential;
+                potentials[column * nodes + row] = potential;
+            }
+        }
+        let mut matrix = Symmetric::zeros(self.unknowns());
+        let mut potential = vec![Complex64::ZERO; nodes];
+        let mut entries = self.branches.iter();
+        for (row, branch) in self.mesh.branches.iter().enumerate() {
+            potential.fill(Complex64::ZERO);
+            for &(node, share) in &branch.ends {
+                let of_node = &potentials[node * nodes..(node + 1) * nodes];
+                for (sum, of_node) in potential.iter_mut().zip(of_node) {
+                    *sum += share * of_node;
+                }
+            }
+            let others = self.mesh.branches[..=row].iter().zip(entries.by_ref());
+            for (column, (other, pair)) in others.enumerate() {
+                let ends = other.ends.iter();
+                let mut entry: Complex64 =
+                    ends.map(|&(node, share)| -share * potential[node]).sum();
+                if let Some((pair, lengths_m2)) = pair {
+                    entry += lengths_m2 * pair.retarded_per_m(k);
+                }
+                matrix.set(row, column, entry);
+            }
+        }
+        matrix
+    }
+
+    /// The branches that carry the unknown currents, in their order.
+    pub fn branches(&self) -> impl Iterator<Item = BranchPlace> {
+        self.mesh.branches.iter().map(|branch| BranchPlace {
+            centre_m: centre_m(&branch.pieces),
+            along_m: branch.along_m,
+        })
+    }
+
+    /// What gives charge and current density at a point of the plate, metres.
+    pub fn probe(&self, x_m: f64, y_m: f64) -> Probe {
+        Probe::new(&self.mesh, &self.into_cells, [x_m, y_m])
+    }
+
+    /// The voltage that an incident field puts along each branch, the field in volts per metre by place in
+    /// metres.
+    pub fn incident_v(&self, field: &impl Fn([f64; 3]) -> [Complex64; 3]) -> Vec<Complex64> {
+        let voltage = |branch: &Branch| {
+            let along = field(centre_m(&branch.pieces))
+                .into_iter()
+                .zip(branch.along_m);
+            along.map(|(e, length_m)| e * length_m).sum()
+        };
+        self.mesh.branches.iter().map(voltage).collect()
+    }
+
+    /// The voltages of a 1 V source in a wire, in the segment whose middle is nearest to a distance from the
+    /// wire's first point.
+    pub fn gap_v(&self, wire: usize, distance_m: f64) -> Vec<Complex64> {
+        let off = |place_m: f64| (place_m - distance_m).abs();
+        let nearest = self.mesh.chains[wire]
+            .branches
+            .iter()
+            .min_by(|a, b| off(a.1).total_cmp(&off(b.1)));
+        let mut voltages = vec![Complex64::ZERO; self.unknowns()];
+        if let Some(&(branch, _)) = nearest {
+            voltages[branch] = Complex64::ONE;
+        }
+        voltages
+    }
+}
+
+/// Cells along the longer side.
+const CELLS: f64 = 13.0;
+/// Cells along the shorter side at least.
+const FEWEST_CELLS: f64 = 7.0;
+/// The widest cell, in wavelengths.
+const CELL_WAVELENGTHS: f64 = 1.0 / 12.0;
+/// The longest wire segment, metres and wavelengths.
+const SEGMENT_M: f64 = 25e-3;
+const SEGMENT_WAVELENGTHS: f64 = 1.0 / 30.0;
+
+fn between_branches(a: &Branch, b: &Branch) -> Option<(Pair, f64)> {
+    let lengths_m2 = dot(a.along_m, b.along_m);
+    let largest_m2 = dot(a.along_m, a.along_m).max(dot(b.along_m, b.along_m));
+    let parallel = lengths_m2.abs() > 1e-12 * largest_m2;
+    parallel.then(|| (Pair::new(&a.pieces, &b.pieces), lengths_m2))
+}
+
+/// The factored equations of one frequency.
+#[derive(Debug, Clone)]
+pub struct Solved<'a> {
+    structure: &'a Structure,
+    frequency_hz: f64,
+    factors: Factors,
+}
+
+impl<'a> Solved<'a> {
+    /// The currents that incident fields drive, each field in volts per metre by place in metres.
+    pub fn respond<F>(&self, fields: &[F]) -> Vec<Currents<'a>>
+    where
+        F: Fn([f64; 3]) -> [Complex64; 3],
+    {
+        let voltages = fields.iter().map(|field| self.structure.incident_v(field));
+        self.driven(voltages.collect())
+    }
+
+    /// The currents that voltages along the branches drive, for several sets of them.
+    pub fn driven(&self, mut voltages: Vec<Vec<Complex64>>) -> Vec<Currents<'a>> {
+        // 4 pi / (j w mu0)
+        let scale = Complex64::new(0.0, -2.0 / (self.frequency_hz * MU0_H_PER_M));
+        self.factors.solve(&mut voltages);
+        voltages
+            .into_iter()
+            .map(|mut branches| {
+                for current in &mut branches {
+                    *current *= scale;
+                }
+                Currents::new(self.structure, self.frequency_hz, branches)
+            })
+            .collect()
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// A thin half-wave dipole: 73.1 + j42.5 ohm (Balanis, Antenna Theory, chapter 8, from memory), the
+    /// limit of no thickness, reached slowly: the thinner, the nearer.
+    #[test]
+    fn half_wave_dipole() {
+        let frequency_hz = 300e6;
+        let half_m = LIGHT_SPEED_M_PER_S / frequency_hz / 4.0;
+        let impedance_ohm = |radius_m: f64| {
+            let wire = Wire {
+                points_m: vec![[0.0, 0.0, -half_m], [0.0, 0.0, half_m]],
+                radius_m,
+                attached: false,
+            };
+            let structure = Structure::of(Mesh::of_wires(&[wire], half_m / 50.5));
+            let gap = structure.gap_v(0, half_m);
+            let currents = structure.at(frequency_hz).driven(vec![gap]);
+            1.0 / currents[0].wire_current_a(0, half_m)
+        };
+        let expected = Complex64::new(73.1, 42.5);
+        let off = |radius_m: f64| (impedance_ohm(radius_m) - expected).norm();
+        assert!(off(1e-6) < 5.0 && off(1e-12) < 2.0 && off(1e-24) < 1.2);
+    }
+}
