@@ -4,7 +4,9 @@
 #![allow(clippy::print_stdout)]
 
 use num_complex::Complex64;
-use ringfield::radiation::plate::{Currents, PlaneWave, Plate, Polarisation, Structure, Wire};
+use ringfield::radiation::plate::{
+    Currents, PlaneWave, Plate, Polarisation, Solved, Structure, Wire,
+};
 
 use serde::Deserialize;
 use std::f64::consts::{PI, TAU};
@@ -153,8 +155,8 @@ impl Incidence {
 }
 
 fn reference() -> Reference {
-    let text = std::fs::read_to_string("tests/reference/plate_fields.json").unwrap();
-    serde_json::from_str(&text).unwrap()
+    let text = std::fs::read_to_string("tests/reference/plate_fields.json").expect("the reference");
+    serde_json::from_str(&text).expect("its form")
 }
 
 /// Consecutive runs of one incidence.
@@ -280,9 +282,10 @@ fn plate_with_cable_agrees_with_boundary_elements() {
             .collect();
         let largest = moments.iter().flatten().map(|&b| complex(b).norm());
         let largest = largest.fold(0.0, f64::max);
-        let currents = structure.at(frequency_hz).respond(&fields);
+        let solved = structure.at(frequency_hz);
+        let currents = solved.respond(&fields);
         for (i, row) in moments.iter().enumerate() {
-            let toward = structure.incident_v(&fields[i]);
+            let toward = solved.incident_v(&fields[i]);
             for (j, &expected) in row.iter().enumerate() {
                 let expected = complex(expected);
                 if expected.norm() > 0.03 * largest {
@@ -321,7 +324,7 @@ fn capacitance() {
 }
 
 /// A mesh of half the cell size moves charge and current 10 mm from an edge and further in by less than
-/// 0.3 dB at 95 % of the points.
+/// 0.3 dB.
 #[test]
 fn halving_the_mesh_changes_little() {
     let plain = Structure::new(BOARD, &[], 1e9);
@@ -360,8 +363,8 @@ fn halving_the_mesh_changes_little() {
                 }
             }
         }
-        let [_, most, _] = ratios.report(&format!("halved mesh, {frequency_hz} Hz"));
-        assert!(most < 0.3);
+        let [_, _, worst] = ratios.report(&format!("halved mesh, {frequency_hz} Hz"));
+        assert!(worst < 0.3);
     }
 }
 
@@ -370,33 +373,40 @@ fn halving_the_mesh_changes_little() {
 fn power_balance() {
     let structure = Structure::new(BOARD, &[cable(0.5, 2e-3)], 1e9);
     for frequency_hz in [50e6, 200e6, 500e6, 1e9] {
-        let gap = structure.gap_v(0, 0.3);
-        let driven = &structure.at(frequency_hz).driven(vec![gap.clone()])[0];
-        let delivered_w = driven.work_va(&gap).re / 2.0;
+        for distance_m in [0.1, 0.3] {
+            let gap = structure.gap_v(0, distance_m);
+            let solved = structure.at(frequency_hz);
+            let driven = &solved.driven(vec![gap.clone()])[0];
+            let delivered_w = driven.work_va(&gap).re / 2.0;
+            let share = radiated_w(&solved, driven, frequency_hz) / delivered_w;
+            println!(
+                "{frequency_hz} Hz, source at {distance_m} m: {share:.4} of the power arrives"
+            );
+            assert!((share - 1.0).abs() < 0.01);
+        }
+    }
+}
 
-        // E r = w mu0 / (4 pi) times the moment; the density is |E|^2 / (2 eta).
-        let scale = (frequency_hz * MU0_H_PER_M / 2.0).powi(2);
-        let impedance_ohm = MU0_H_PER_M * LIGHT_SPEED_M_PER_S;
-        let (rings, turns) = (60, 72);
-        let mut radiated_w = 0.0;
-        for ring in 0..rings {
-            let theta_deg = 180.0 * (ring as f64 + 0.5) / rings as f64;
-            let solid = theta_deg.to_radians().sin() * PI / rings as f64 * TAU / turns as f64;
-            for turn in 0..turns {
-                let phi_deg = 360.0 * turn as f64 / turns as f64;
-                for polarisation in [Polarisation::Theta, Polarisation::Phi] {
-                    let field = wave(theta_deg, phi_deg, polarisation).electric(frequency_hz);
-                    let moment = driven.work_va(&structure.incident_v(&field));
-                    radiated_w += scale * moment.norm_sqr() / (2.0 * impedance_ohm) * solid;
-                }
+/// The far field's power density over the sphere.
+fn radiated_w(solved: &Solved, driven: &Currents, frequency_hz: f64) -> f64 {
+    // E r = w mu0 / (4 pi) times the moment; the density is |E|^2 / (2 eta).
+    let scale = (frequency_hz * MU0_H_PER_M / 2.0).powi(2);
+    let impedance_ohm = MU0_H_PER_M * LIGHT_SPEED_M_PER_S;
+    let (rings, turns) = (36, 40);
+    let mut radiated_w = 0.0;
+    for ring in 0..rings {
+        let theta_deg = 180.0 * (ring as f64 + 0.5) / rings as f64;
+        let solid = theta_deg.to_radians().sin() * PI / rings as f64 * TAU / turns as f64;
+        for turn in 0..turns {
+            let phi_deg = 360.0 * turn as f64 / turns as f64;
+            for polarisation in [Polarisation::Theta, Polarisation::Phi] {
+                let field = wave(theta_deg, phi_deg, polarisation).electric(frequency_hz);
+                let moment = driven.work_va(&solved.incident_v(&field));
+                radiated_w += scale * moment.norm_sqr() / (2.0 * impedance_ohm) * solid;
             }
         }
-        println!(
-            "{frequency_hz} Hz: {:.4} of the power arrives",
-            radiated_w / delivered_w
-        );
-        assert!((radiated_w / delivered_w - 1.0).abs() < 0.01);
     }
+    radiated_w
 }
 
 /// A source in one cable drives in another what one there drives here, and sends towards a direction what
@@ -411,12 +421,13 @@ fn reciprocity() {
     };
     let structure = Structure::new(BOARD, &[cable(0.7, 2e-3), second], 1e9);
     let field = waves()[5].electric(frequency_hz);
+    let solved = structure.at(frequency_hz);
     let sources = vec![
         structure.gap_v(0, 0.2),
         structure.gap_v(1, 0.3),
-        structure.incident_v(&field),
+        solved.incident_v(&field),
     ];
-    let driven = structure.at(frequency_hz).driven(sources.clone());
+    let driven = solved.driven(sources.clone());
     for (i, a) in driven.iter().enumerate() {
         for (j, b) in driven.iter().enumerate() {
             let (forth, back) = (a.work_va(&sources[j]), b.work_va(&sources[i]));
@@ -441,7 +452,7 @@ fn pickup_of_a_point_serves_all_waves() {
     for (field, lit) in fields.iter().zip(solved.respond(&fields)) {
         let [k_x, k_y] = lit.current_a_per_m(&probe);
         let direct = charge * lit.charge_c_per_m2(&probe) + current[0] * k_x + current[1] * k_y;
-        let found = driven.work_va(&structure.incident_v(field));
+        let found = driven.work_va(&solved.incident_v(field));
         assert!((found - direct).norm() < 1e-9 * direct.norm());
     }
 }
@@ -451,7 +462,7 @@ fn pickup_of_a_point_serves_all_waves() {
 #[test]
 fn magnetic_field_doubles_on_a_large_plate() {
     let frequencies_hz = [0.6e9, 0.8e9, 1.0e9, 1.2e9, 1.4e9];
-    for (side_m, cells, factor, within) in [(0.6, 17, 2.0, 0.1), (0.005, 7, 1.0, 0.01)] {
+    for (side_m, cells, factor, within) in [(0.6, 17, 2.0, 0.1), (0.001, 7, 1.0, 0.02)] {
         let plate = Plate {
             length_m: side_m,
             width_m: side_m,

@@ -6,7 +6,7 @@ use clap::Args;
 use rayon::prelude::*;
 use ringfield::board::{Board, CableRun, Reading, UnusableNet, read_board};
 use ringfield::limit::{Limit, LimitAt, default_limits, limits_at};
-use ringfield::radiation::Strongest;
+use ringfield::radiation::{Strongest, UNKNOWN_CABLE_LENGTHS_M};
 use ringfield::show::{
     self, CheckReport, check_json, check_table, harmonics_csv, march_table, spectrum_picture,
     waveform_csv, waveform_picture,
@@ -189,7 +189,7 @@ fn report(
     let report = CheckReport {
         board: board.title.clone(),
         site: setup.site,
-        remarks: cable_remark(board).into_iter().collect(),
+        remarks: cable_remarks(board),
         nets: check_all(board, &setup),
         distances_m: setup.distances_m,
         limits,
@@ -258,28 +258,42 @@ fn check_all(board: &Board, setup: &CheckSetup) -> Vec<NetResult> {
         .collect()
 }
 
-fn cable_remark(board: &Board) -> Option<String> {
-    match board.cables.as_deref() {
-        Some([]) => None,
-        Some(_) if board.plane.is_none() => Some(
-            "Cables are not in the figures, since the file gives no `plane` for them to hang on, and \
-             they often dominate."
-                .into(),
-        ),
-        Some(cables) => {
-            let hung = cables.iter().any(|cable| cable.run != CableRun::Straight);
-            hung.then(|| {
-                "Cables that drop to the floor are taken as straight, and the floor is not in their \
-                 figures: expect several dB either way."
-                    .into()
-            })
-        }
-        None => Some(
+/// What has to be said about the cables.
+fn cable_remarks(board: &Board) -> Vec<String> {
+    let Some(cables) = board.cables.as_deref() else {
+        return vec![
             "The file does not say what hangs on the board (`cables: []` says that nothing does), \
              and cables often dominate."
                 .into(),
-        ),
+        ];
+    };
+    if cables.is_empty() {
+        return Vec::new();
     }
+    if board.plane.is_none() {
+        return vec![
+            "Cables are not yet in the figures, since the file gives no `plane` for them to hang on, \
+             and they often dominate."
+                .into(),
+        ];
+    }
+    let mut remarks = vec![
+        "Cables are in the figures as straight wires in free space; the floor acts on them by the same \
+         factor as on the board, where it may in truth move them by many dB either way."
+            .into(),
+    ];
+    if cables.iter().any(|cable| cable.run != CableRun::Straight) {
+        remarks.push("Cables that drop to the floor are taken as straight.".into());
+    }
+    if cables.iter().any(|cable| cable.length_m.is_none()) {
+        let lengths = UNKNOWN_CABLE_LENGTHS_M
+            .map(|length_m| length_m.to_string())
+            .join(", ");
+        remarks.push(format!(
+            "Cables of unknown length are tried with {lengths} m; the worst counts."
+        ));
+    }
+    remarks
 }
 
 fn covers_nothing(report: &CheckReport) -> bool {

@@ -1,7 +1,7 @@
 //! Far fields of currents on a board and of what nets pick up there, over all directions.
 
 use super::peak::vertex;
-use super::plate::Structure;
+use super::plate::BranchPlace;
 use crate::ETA0_OHM;
 use num_complex::Complex64;
 use std::f64::consts::PI;
@@ -18,31 +18,31 @@ pub(super) struct Pickup {
 
 /// Currents times lengths, each at its place.
 pub(super) struct Flow<'a> {
-    structure: &'a Structure,
+    branches: &'a [BranchPlace],
     /// Along each axis: number of the branch, its current times its length.
     along: [Vec<(usize, Complex64)>; 3],
 }
 
 impl<'a> Flow<'a> {
     /// The flow of currents along the branches.
-    pub(super) fn new(structure: &'a Structure, branches_a: &[Complex64]) -> Self {
+    pub(super) fn new(branches: &'a [BranchPlace], branches_a: &[Complex64]) -> Self {
         let mut along = [Vec::new(), Vec::new(), Vec::new()];
-        for (number, (branch, current)) in structure.branches().zip(branches_a).enumerate() {
+        for (number, (branch, current)) in branches.iter().zip(branches_a).enumerate() {
             for (axis, along) in along.iter_mut().enumerate() {
                 if branch.along_m[axis] != 0.0 {
                     along.push((number, current * branch.along_m[axis]));
                 }
             }
         }
-        Self { structure, along }
+        Self { branches, along }
     }
 
     /// What a wave of 1 V/m from a direction finds, along theta and along phi.
     pub(super) fn toward(&self, at: [f64; 2], k: f64, pickups: &[Pickup]) -> [Complex64; 2] {
         let direction = Direction::new(at);
         let phases: Vec<Complex64> = self
-            .structure
-            .branches()
+            .branches
+            .iter()
             .map(|branch| direction.phase(k, branch.centre_m))
             .collect();
         direction.found(self, &phases, pickups, k)
@@ -119,13 +119,13 @@ pub(super) struct Directions {
 }
 
 impl Directions {
-    pub(super) fn new(steps: usize, k: f64, structure: &Structure) -> Self {
+    pub(super) fn new(steps: usize, k: f64, branches: &[BranchPlace]) -> Self {
         let step = PI / steps as f64;
         let grid = (0..=steps).flat_map(|i| (0..2 * steps).map(move |j| [i, j]));
         let directions: Vec<Direction> = grid
             .map(|at| Direction::new(at.map(|i| i as f64 * step)))
             .collect();
-        let table = Coordinates::of(structure);
+        let table = Coordinates::of(branches);
         let phases = directions
             .iter()
             .map(|direction| table.phases(k, direction))
@@ -173,10 +173,10 @@ struct Coordinates {
 }
 
 impl Coordinates {
-    fn of(structure: &Structure) -> Self {
+    fn of(branches: &[BranchPlace]) -> Self {
         let mut different_m = [Vec::new(), Vec::new(), Vec::new()];
-        let of_branches = structure
-            .branches()
+        let of_branches = branches
+            .iter()
             .map(|branch| {
                 let mut places = [0; 3];
                 for axis in 0..3 {

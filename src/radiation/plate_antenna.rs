@@ -5,13 +5,15 @@
 //! points, and the currents' far field is the net's own, scattered part; the incident wave's part is added.
 
 use super::far_field::{Directions, Flow, Pickup};
-use super::plate::{Plate, Probe, Solved, Structure, Wire};
+use super::plate::{BranchPlace, Plate, Probe, Solved, Structure, Wire};
 use super::{Antenna, LitSegment, Strongest};
 use crate::board::{Cable, Edge, Plane};
 use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
 use num_complex::Complex64;
 use std::f64::consts::TAU;
 
+/// What a cable of unknown length is tried with: a quarter and a half wave of the band's lower half.
+pub const UNKNOWN_CABLE_LENGTHS_M: [f64; 4] = [0.5, 1.0, 1.5, 2.0];
 /// Longest piece of a trace that one set of sample points serves.
 const PIECE_M: f64 = 20e-3;
 /// Gauss-Legendre points and weights on a piece from 0 to 1 (Abramowitz & Stegun, table 25.4).
@@ -56,8 +58,54 @@ enum Part {
     Both,
 }
 
+/// Several antennas of which the strongest counts, net by net and frequency by frequency.
+#[derive(Debug)]
+pub struct WorstOf(Vec<PlateAntenna>);
+
+impl WorstOf {
+    /// The antennas of a board some of whose cables have no known length: one for each of
+    /// [`UNKNOWN_CABLE_LENGTHS_M`], or a single one where every length is known.
+    pub fn new(plane: &Plane, cables: &[Cable], top_frequency_hz: f64) -> Self {
+        let known = cables.iter().all(|cable| cable.length_m.is_some());
+        let lengths_m = if known {
+            &UNKNOWN_CABLE_LENGTHS_M[..1]
+        } else {
+            &UNKNOWN_CABLE_LENGTHS_M
+        };
+        let antenna = |&length_m: &f64| {
+            let cables: Vec<Cable> = cables
+                .iter()
+                .map(|cable| Cable {
+                    length_m: cable.length_m.or(Some(length_m)),
+                    ..cable.clone()
+                })
+                .collect();
+            PlateAntenna::new(plane, &cables, top_frequency_hz)
+        };
+        Self(lengths_m.iter().map(antenna).collect())
+    }
+}
+
+impl Antenna for WorstOf {
+    fn frequency_share(&self) -> f64 {
+        FREQUENCY_SHARE
+    }
+
+    fn strongest(&self, frequency_hz: f64, nets: &[Vec<LitSegment>]) -> Vec<Strongest> {
+        let mut worst = vec![Strongest::default(); nets.len()];
+        for antenna in &self.0 {
+            for (worst, other) in worst.iter_mut().zip(antenna.strongest(frequency_hz, nets)) {
+                if other.total_v >= worst.total_v {
+                    *worst = other;
+                }
+            }
+        }
+        worst
+    }
+}
+
 impl PlateAntenna {
-    /// The antenna of a plane and its straight cables up to a top frequency.
+    /// The antenna of a plane and its straight cables of known length up to a top frequency.
     pub fn new(plane: &Plane, cables: &[Cable], top_frequency_hz: f64) -> Self {
         let plate = Plate {
             length_m: plane.length_m,
@@ -135,31 +183,47 @@ impl Antenna for PlateAntenna {
         let bare = self.bare.as_ref().map(|bare| bare.at(frequency_hz));
         let k = TAU * frequency_hz / LIGHT_SPEED_M_PER_S;
         let [fewest, most] = STEPS_PER_HALF_TURN;
+        let branches = whole.branches();
+        let bare_branches = bare.as_ref().map(Solved::branches);
         let steps = (fewest + (2.0 * k * self.reach_m) as usize).min(most);
-        let directions = Directions::new(steps, k, &self.whole);
+        let directions = Directions::new(steps, k, &branches);
         // far field times distance = f mu0 / 2 times what is picked up from a wave of 1 V/m
         let scale = frequency_hz * MU0_H_PER_M / 2.0;
         let size =
             |[theta, phi]: [Complex64; 2]| scale * (theta.norm_sqr() + phi.norm_sqr()).sqrt();
-        nets.iter()
-            .map(|segments| {
-                let sources = self.sources(frequency_hz, segments);
-                let both = Part::Both.of(&sources);
-                let flow = driven(&self.whole, &whole, frequency_hz, 0, &sources, &both);
-                let (squared, at) = directions.strongest(&flow, &both);
-                let alone = |part: Part| {
-                    let part = part.of(&sources);
-                    let flow = match (&self.bare, &bare) {
-                        (Some(structure), Some(solved)) => {
-                            driven(structure, solved, frequency_hz, 1, &sources, &part)
-                        }
-                        _ => driven(&self.whole, &whole, frequency_hz, 0, &sources, &part),
-                    };
-                    flow.toward(at, k, &part)
-                };
-                let (loops, charges) = (alone(Part::Loops), alone(Part::Charges));
+        let sources: Vec<Vec<Source>> = nets
+            .iter()
+            .map(|segments| self.sources(frequency_hz, segments))
+            .collect();
+        let part = |part: Part| sources.iter().map(|s| part.of(s)).collect::<Vec<_>>();
+        let [both, loops, charges] = [Part::Both, Part::Loops, Part::Charges].map(part);
+        let flows = driven(&branches, &whole, frequency_hz, 0, &sources, &[&both]);
+        let parts = match (&bare_branches, &bare) {
+            (Some(bare_branches), Some(solved)) => driven(
+                bare_branches,
+                solved,
+                frequency_hz,
+                1,
+                &sources,
+                &[&loops, &charges],
+            ),
+            _ => driven(
+                &branches,
+                &whole,
+                frequency_hz,
+                0,
+                &sources,
+                &[&loops, &charges],
+            ),
+        };
+        let (of_loops, of_charges) = parts.split_at(nets.len());
+        (0..nets.len())
+            .map(|net| {
+                let (squared, at) = directions.strongest(&flows[net], &both[net]);
+                let loops = of_loops[net].toward(at, k, &loops[net]);
+                let charges = of_charges[net].toward(at, k, &charges[net]);
                 let cables_v = self.bare.is_some().then(|| {
-                    let total = flow.toward(at, k, &both);
+                    let total = flows[net].toward(at, k, &both[net]);
                     size([0, 1].map(|c| total[c] - loops[c] - charges[c]))
                 });
                 Strongest {
@@ -190,33 +254,41 @@ impl Part {
     }
 }
 
-/// The currents that stand, by reciprocity, for what a net picks up of any wave.
+/// The currents that stand, by reciprocity, for what each net picks up of any wave, for each list of the nets' pickups.
 fn driven<'a>(
-    structure: &'a Structure,
-    solved: &Solved<'a>,
+    branches: &'a [BranchPlace],
+    solved: &Solved,
     frequency_hz: f64,
     probes: usize,
-    sources: &[Source],
-    pickups: &[Pickup],
-) -> Flow<'a> {
+    sources: &[Vec<Source>],
+    parts: &[&Vec<Vec<Pickup>>],
+) -> Vec<Flow<'a>> {
     // The upper face has half of the charge, E_z = sigma / 2 eps0, and half of the current, H = -K / 2.
     let per_charge = MU0_H_PER_M * LIGHT_SPEED_M_PER_S.powi(2) / 2.0;
-    let mut voltages = vec![Complex64::ZERO; structure.unknowns()];
-    for (source, pickup) in sources.iter().zip(pickups) {
-        if let Some(probe) = &source.probes[probes] {
-            let current = pickup.loop_.map(|along| -along / 2.0);
-            probe.add_pickup(
-                frequency_hz,
-                pickup.charge * per_charge,
-                current,
-                &mut voltages,
-            );
+    let voltages_of = |sources: &Vec<Source>, pickups: &Vec<Pickup>| {
+        let mut voltages = vec![Complex64::ZERO; branches.len()];
+        for (source, pickup) in sources.iter().zip(pickups) {
+            if let Some(probe) = &source.probes[probes] {
+                let current = pickup.loop_.map(|along| -along / 2.0);
+                probe.add_pickup(
+                    frequency_hz,
+                    pickup.charge * per_charge,
+                    current,
+                    &mut voltages,
+                );
+            }
         }
-    }
-    Flow::new(
-        structure,
-        solved.driven(vec![voltages]).remove(0).branches_a(),
-    )
+        voltages
+    };
+    let voltages = parts
+        .iter()
+        .flat_map(|of_nets| sources.iter().zip(*of_nets).map(|(s, p)| voltages_of(s, p)))
+        .collect();
+    let currents = solved.driven(voltages);
+    currents
+        .iter()
+        .map(|currents| Flow::new(branches, currents.branches_a()))
+        .collect()
 }
 
 /// From the middle of a plane and its wires to their farthest end.

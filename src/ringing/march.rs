@@ -7,6 +7,9 @@ use super::steps::Pace;
 use super::travelling::{Model, TravellingLine};
 use ndarray::Array2;
 
+#[cfg(test)]
+mod energy_tests;
+
 /// Largest share of the swing by which the settled waveform may still be off.
 const SETTLED: f64 = 1e-6;
 /// Losses are fitted from here on: what lies lower is not radiated, and its slow relaxations would keep a net long

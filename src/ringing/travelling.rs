@@ -133,6 +133,18 @@ impl TravellingLine {
         }
     }
 
+    /// What both ends take from their nodes at this step.
+    #[cfg(test)]
+    pub(super) fn power_w(&self, voltage_v: &[f64]) -> f64 {
+        self.ends
+            .iter()
+            .map(|end| {
+                let node_v = voltage_v[end.node];
+                node_v * (end.conductance_s * node_v - end.source_a)
+            })
+            .sum()
+    }
+
     /// The waves that set out from both ends in the last period.
     pub(super) fn last_period(&self) -> [Vec<f64>; 2] {
         [0, 1].map(|end| self.waves[end].last_period())

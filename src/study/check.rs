@@ -7,7 +7,7 @@ use super::{FieldReading, Harmonic, NetResult, Worst};
 use crate::board::{Board, Net};
 use crate::limit::{Limit, LimitAt, limits_at};
 use crate::radiation::{
-    Antenna, LargePlane, Layout, LitSegment, PlateAntenna, Site, Strongest, lit_segments,
+    Antenna, LargePlane, Layout, LitSegment, Site, Strongest, WorstOf, lit_segments,
     loop_area_v_per_m, near_field_factor,
 };
 use crate::ringing::{Network, Settled, settle};
@@ -69,7 +69,7 @@ pub fn board_antenna(board: &Board, top_frequency_hz: f64) -> Box<dyn Antenna> {
     match &board.plane {
         Some(plane) => {
             let cables = board.cables.as_deref().unwrap_or_default();
-            Box::new(PlateAntenna::new(plane, cables, top_frequency_hz))
+            Box::new(WorstOf::new(plane, cables, top_frequency_hz))
         }
         None => Box::new(LargePlane),
     }

@@ -94,11 +94,14 @@ def main():
         receiver_v, driver_a = solve(cells)
         low_a, high_a = junction_a(-receiver_v), junction_a(receiver_v - SWING_V)
         step_s = PERIOD_S / SAMPLES
+        # Each heats while it conducts; the upper one's drop is over the supply.
+        power_w = np.mean(low_a * -receiver_v), np.mean(high_a * (receiver_v - SWING_V))
         rms_a = np.abs(np.fft.rfft(driver_a)) * np.sqrt(2) / SAMPLES
         print(f"{cells} cells")
         print(f"  receiver {receiver_v.min():.4f} .. {receiver_v.max():.4f} V")
         print(f"  clamp peaks, low and high: {1e3 * low_a.max():.2f}, {1e3 * high_a.max():.2f} mA")
         print(f"  charge: {1e12 * low_a.sum() * step_s:.2f}, {1e12 * high_a.sum() * step_s:.2f} pC an edge")
+        print(f"  mean power: {1e3 * power_w[0]:.4f}, {1e3 * power_w[1]:.4f} mW")
         levels = ", ".join(f"{20 * np.log10(rms_a[n] * 1e6):.2f}" for n in range(1, 20, 2))
         print(f"  driver current, harmonics 1, 3 .. 19, dBuA rms: {levels}", flush=True)
 

@@ -27,6 +27,14 @@ pub struct Branch {
     pub along_m: [f64; 3],
 }
 
+impl Branch {
+    /// Mean current over the length, relative to that in the middle: the current bends as a wave does.
+    pub fn mean_current(&self, k: f64) -> f64 {
+        let half_turn = k * norm(self.along_m) / 2.0;
+        half_turn.sin() / half_turn
+    }
+}
+
 /// Middle of pieces, each with its share; metres.
 pub fn centre_m(pieces: &[(f64, Piece)]) -> [f64; 3] {
     let mut centre = [0.0; 3];

@@ -1,7 +1,7 @@
 //! The factors of a dense complex symmetric matrix, L D L^T without exchanges.
 //!
-//! The equations' own terms stand largest on the diagonal, so no exchange is needed; the symmetry
-//! halves the work of an LU. Real and imaginary parts lie apart, so that the loops become vector code.
+//! The largest terms of the equations stand on the diagonal, so no exchange is needed; the symmetry halves
+//! the work of an LU. Real and imaginary parts lie apart, so that the loops become vector code.
 
 use num_complex::Complex64;
 
@@ -137,7 +137,8 @@ struct Pivots {
     inverse: Vec<Complex64>,
 }
 
-/// target_t -= sum over s of source_s pivot_s source_s[t]
+/// Takes from the first target, row by row, every source times its pivot times its own first row; from the
+/// second target the same with its second row.
 #[inline(always)]
 fn subtract<const COUNT: usize, const SOURCES: usize>(
     targets: &mut [(&mut [f64], &mut [f64]); COUNT],

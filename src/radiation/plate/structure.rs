@@ -1,10 +1,14 @@
 //! The integral equation: geometry once, a factored matrix per frequency.
 //!
 //! Along each branch the incident field drives the current against the vector potential of all currents
-//! and the difference of its nodes' potentials; the charges are what the currents leave behind. With g
-//! the mean of 1/R between two pieces, g exp(-jk/g) is the mean of the retarded exp(-jkR)/R: the mean
-//! distance 1/g keeps the -jk of a piece on itself, by which it radiates, and is the distance between
-//! centres far away.
+//! and the difference of its nodes' potentials; the charges are what the currents leave behind. The mean
+//! of exp(-jkR)/R between two pieces is their mean of 1/R, singular and so integrated exactly, plus the
+//! smooth rest (exp(-jkR) - 1)/R between their centres; on itself a piece keeps -jk of it, by which it
+//! radiates.
+//!
+//! A branch's unknown is the current in its middle. Its mean over the branch is taken as a wave's,
+//! sin(kl/2)/(kl/2) of it, in what it makes and in what it feels, so that a wave runs along a cut-up wire
+//! at its right speed.
 
 use super::axis::Axis;
 use super::kernel::{Piece, difference, dot, mean_inverse_distance_per_m, norm};
@@ -16,12 +20,22 @@ use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
 use num_complex::Complex64;
 use std::f64::consts::{PI, TAU};
 
+/// Cells along the longer side.
+const CELLS: f64 = 13.0;
+/// Cells along the shorter side at least.
+const FEWEST_CELLS: f64 = 7.0;
+/// The widest cell, in wavelengths.
+const CELL_WAVELENGTHS: f64 = 0.1;
+/// The longest wire segment, metres and wavelengths.
+const SEGMENT_M: f64 = 25e-3;
+const SEGMENT_WAVELENGTHS: f64 = 0.04;
+
 /// Where a branch lies.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct BranchPlace {
     /// Its middle, metres.
     pub centre_m: [f64; 3],
-    /// From its start to its end, metres.
+    /// From its start to its end, metres, times the mean over its length of what it carries in the middle.
     pub along_m: [f64; 3],
 }
 
@@ -30,9 +44,9 @@ pub struct BranchPlace {
 pub struct Structure {
     pub(super) mesh: Mesh,
     into_cells: Vec<Vec<(usize, f64)>>,
-    /// Between nodes, the lower triangle by rows.
+    /// Between each node and those from it on.
     nodes: Vec<Pair>,
-    /// Between branches, with the scalar product of their lengths; nothing between perpendicular ones.
+    /// The same between branches, with the scalar product of their lengths; none between perpendicular ones.
     branches: Vec<Option<(Pair, f64)>>,
 }
 
@@ -116,12 +130,13 @@ impl Structure {
 
     pub(super) fn of(mesh: Mesh) -> Self {
         let mut nodes = Vec::new();
-        for (row, a) in mesh.nodes.iter().enumerate() {
-            nodes.extend(mesh.nodes[..=row].iter().map(|b| Pair::new(a, b)));
+        for (first, a) in mesh.nodes.iter().enumerate() {
+            nodes.extend(mesh.nodes[first..].iter().map(|b| Pair::new(a, b)));
         }
         let mut branches = Vec::new();
-        for (row, a) in mesh.branches.iter().enumerate() {
-            branches.extend(mesh.branches[..=row].iter().map(|b| between_branches(a, b)));
+        for (first, a) in mesh.branches.iter().enumerate() {
+            let others = mesh.branches[first..].iter();
+            branches.extend(others.map(|b| between_branches(a, b)));
         }
         Self {
             into_cells: mesh.flows_into_cells(),
@@ -145,9 +160,9 @@ impl Structure {
     pub fn capacitance_f(&self) -> f64 {
         let order = self.mesh.nodes.len();
         let mut matrix = Symmetric::zeros(order);
-        let mut entries = self.nodes.iter();
-        for row in 0..order {
-            for (column, pair) in entries.by_ref().take(row + 1).enumerate() {
+        let mut pairs = self.nodes.iter();
+        for column in 0..order {
+            for (row, pair) in (column..order).zip(pairs.by_ref()) {
                 matrix.set(row, column, pair.mean_inverse_per_m.into());
             }
         }
@@ -160,30 +175,38 @@ impl Structure {
 
     /// The equations of one frequency, factored.
     pub fn at(&self, frequency_hz: f64) -> Solved<'_> {
+        let k = TAU * frequency_hz / LIGHT_SPEED_M_PER_S;
+        let means: Vec<f64> = self
+            .mesh
+            .branches
+            .iter()
+            .map(|branch| branch.mean_current(k))
+            .collect();
         Solved {
             structure: self,
             frequency_hz,
-            factors: self.matrix(frequency_hz).factor(),
+            factors: self.matrix(k, &means).factor(),
+            means,
         }
     }
 
     /// The equations, divided by j w mu0 / 4 pi.
-    fn matrix(&self, frequency_hz: f64) -> Symmetric {
-        let k = TAU * frequency_hz / LIGHT_SPEED_M_PER_S;
+    fn matrix(&self, k: f64, means: &[f64]) -> Symmetric {
         let nodes = self.mesh.nodes.len();
         let mut potentials = vec![Complex64::ZERO; nodes * nodes];
-        let mut entries = self.nodes.iter();
-        for row in 0..nodes {
-            for (column, pair) in entries.by_ref().take(row + 1).enumerate() {
+        let mut pairs = self.nodes.iter();
+        for first in 0..nodes {
+            for (second, pair) in (first..nodes).zip(pairs.by_ref()) {
                 let potential = pair.retarded_per_m(k) / (k * k);
-                potentials[row * nodes + column] = potential;
-                potentials[column * nodes + row] = potential;
+                potentials[first * nodes + second] = potential;
+                potentials[second * nodes + first] = potential;
             }
         }
-        let mut matrix = Symmetric::zeros(self.unknowns());
+        let branches = &self.mesh.branches;
+        let mut matrix = Symmetric::zeros(branches.len());
         let mut potential = vec![Complex64::ZERO; nodes];
-        let mut entries = self.branches.iter();
-        for (row, branch) in self.mesh.branches.iter().enumerate() {
+        let mut pairs = self.branches.iter();
+        for (column, branch) in branches.iter().enumerate() {
             potential.fill(Complex64::ZERO);
             for &(node, share) in &branch.ends {
                 let of_node = &potentials[node * nodes..(node + 1) * nodes];
@@ -191,12 +214,12 @@ impl Structure {
                     *sum += share * of_node;
                 }
             }
-            let others = self.mesh.branches[..=row].iter().zip(entries.by_ref());
-            for (column, (other, pair)) in others.enumerate() {
-                let ends = other.ends.iter();
+            for (row, pair) in (column..branches.len()).zip(pairs.by_ref()) {
+                let ends = branches[row].ends.iter();
                 let mut entry: Complex64 =
                     ends.map(|&(node, share)| -share * potential[node]).sum();
                 if let Some((pair, lengths_m2)) = pair {
+                    let lengths_m2 = means[row] * means[column] * lengths_m2;
                     entry += lengths_m2 * pair.retarded_per_m(k);
                 }
                 matrix.set(row, column, entry);
@@ -205,29 +228,10 @@ impl Structure {
         matrix
     }
 
-    /// The branches that carry the unknown currents, in their order.
-    pub fn branches(&self) -> impl Iterator<Item = BranchPlace> {
-        self.mesh.branches.iter().map(|branch| BranchPlace {
-            centre_m: centre_m(&branch.pieces),
-            along_m: branch.along_m,
-        })
-    }
-
-    /// What gives charge and current density at a point of the plate, metres.
+    /// What gives charge and current density at a point inside the plate, metres; on its very edge they are
+    /// infinite.
     pub fn probe(&self, x_m: f64, y_m: f64) -> Probe {
         Probe::new(&self.mesh, &self.into_cells, [x_m, y_m])
-    }
-
-    /// The voltage that an incident field puts along each branch, the field in volts per metre by place in
-    /// metres.
-    pub fn incident_v(&self, field: &impl Fn([f64; 3]) -> [Complex64; 3]) -> Vec<Complex64> {
-        let voltage = |branch: &Branch| {
-            let along = field(centre_m(&branch.pieces))
-                .into_iter()
-                .zip(branch.along_m);
-            along.map(|(e, length_m)| e * length_m).sum()
-        };
-        self.mesh.branches.iter().map(voltage).collect()
     }
 
     /// The voltages of a 1 V source in a wire, in the segment whose middle is nearest to a distance from the
@@ -246,16 +250,6 @@ impl Structure {
     }
 }
 
-/// Cells along the longer side.
-const CELLS: f64 = 13.0;
-/// Cells along the shorter side at least.
-const FEWEST_CELLS: f64 = 7.0;
-/// The widest cell, in wavelengths.
-const CELL_WAVELENGTHS: f64 = 1.0 / 12.0;
-/// The longest wire segment, metres and wavelengths.
-const SEGMENT_M: f64 = 25e-3;
-const SEGMENT_WAVELENGTHS: f64 = 1.0 / 30.0;
-
 fn between_branches(a: &Branch, b: &Branch) -> Option<(Pair, f64)> {
     let lengths_m2 = dot(a.along_m, b.along_m);
     let largest_m2 = dot(a.along_m, a.along_m).max(dot(b.along_m, b.along_m));
@@ -269,6 +263,8 @@ pub struct Solved<'a> {
     structure: &'a Structure,
     frequency_hz: f64,
     factors: Factors,
+    /// Mean current of each branch over that in its middle.
+    means: Vec<f64>,
 }
 
 impl<'a> Solved<'a> {
@@ -277,8 +273,30 @@ impl<'a> Solved<'a> {
     where
         F: Fn([f64; 3]) -> [Complex64; 3],
     {
-        let voltages = fields.iter().map(|field| self.structure.incident_v(field));
+        let voltages = fields.iter().map(|field| self.incident_v(field));
         self.driven(voltages.collect())
+    }
+
+    /// The voltage that an incident field puts along each branch, the field in volts per metre by place in
+    /// metres.
+    pub fn incident_v(&self, field: &impl Fn([f64; 3]) -> [Complex64; 3]) -> Vec<Complex64> {
+        let voltage = |(branch, mean): (&Branch, &f64)| {
+            let field = field(centre_m(&branch.pieces));
+            let along = field.into_iter().zip(branch.along_m);
+            along.map(|(e, length_m)| e * length_m * mean).sum()
+        };
+        let branches = self.structure.mesh.branches.iter();
+        branches.zip(&self.means).map(voltage).collect()
+    }
+
+    /// The branches that carry the unknown currents, in their order, as they act on far fields.
+    pub fn branches(&self) -> Vec<BranchPlace> {
+        let place = |(branch, mean): (&Branch, &f64)| BranchPlace {
+            centre_m: centre_m(&branch.pieces),
+            along_m: branch.along_m.map(|length_m| length_m * mean),
+        };
+        let branches = self.structure.mesh.branches.iter();
+        branches.zip(&self.means).map(place).collect()
     }
 
     /// The currents that voltages along the branches drive, for several sets of them.

@@ -29,13 +29,11 @@ impl Probe {
             let into = into_cells[mesh.node(cell)].iter();
             growth.extend(into.map(|&(branch, share)| (branch, share * weight)));
         }
-        let current = [
-            products(&crossing[0], &density[1]),
-            products(&density[0], &crossing[1]),
-        ];
-        let mut axes = 0..2;
-        let current = current.map(|weights| {
-            let axis = axes.next().unwrap_or_default();
+        let current = [0, 1].map(|axis| {
+            let weights = match axis {
+                0 => products(&crossing[0], &density[1]),
+                _ => products(&density[0], &crossing[1]),
+            };
             let branches = weights.into_iter();
             branches
                 .map(|(cell, weight)| (mesh.plate_branch(axis, cell), weight))
@@ -130,7 +128,7 @@ impl<'a> Currents<'a> {
             .sum()
     }
 
-    /// The currents along the branches, amperes.
+    /// The currents in the middle of the branches, amperes.
     pub fn branches_a(&self) -> &[Complex64] {
         &self.branches_a
     }
@@ -180,7 +178,7 @@ impl<'a> Currents<'a> {
 
     /// Sum over the branches of voltage times current, volt amperes (no conjugate).
     ///
-    /// With a plane wave's voltages ([`Structure::incident_v`]) it gives the far field towards the wave's
+    /// With a plane wave's voltages ([`super::Solved::incident_v`]) it gives the far field towards the wave's
     /// source along the wave's field: E r = -j w mu0 / (4 pi) exp(-jkr) times it over 1 V/m.
     pub fn work_va(&self, voltages: &[Complex64]) -> Complex64 {
         let pairs = voltages.iter().zip(&self.branches_a);
