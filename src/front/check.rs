@@ -82,11 +82,17 @@ pub fn run(options: &Options) -> Result<Ending, Refusal> {
         files => input::limits(files)?,
     };
     let reading = read(&options.board)?;
+    // The whole board decides how far to scan, whichever nets are asked for.
+    let scan_hz = reading
+        .board
+        .as_ref()
+        .map(|board| scan_band_hz(board, &limits));
     let broken_elsewhere = reading.unusable.is_empty() && has_errors(&reading);
     let (board, unusable) = selected(reading, &options.board, &options.net)?;
     check_places(options)?;
 
-    let report = report(options, &board, unusable, limits)?;
+    let setup = setup(options, scan_hz.unwrap_or_default(), limits);
+    let report = report(setup, &board, unusable)?;
     let several = report.nets.len() + report.unusable.len() > 1;
     output::write(outputs(options, &report, several))?;
     output::print(&answer(options, &report))?;
@@ -176,12 +182,10 @@ fn check_places(options: &Options) -> Result<(), Refusal> {
 
 /// Works out every net.
 fn report(
-    options: &Options,
+    setup: CheckSetup,
     board: &Board,
     unusable: Vec<UnusableNet>,
-    limits: Vec<Limit>,
 ) -> Result<CheckReport, Refusal> {
-    let setup = setup(options, board, limits);
     let distances = setup.distances_m.iter();
     let limits: Vec<LimitAt> = distances
         .flat_map(|distance_m| limits_at(&setup.limits, *distance_m))
@@ -204,7 +208,11 @@ fn report(
     Ok(report)
 }
 
-fn setup(options: &Options, board: &Board, limits: Vec<Limit>) -> CheckSetup {
+fn setup(
+    options: &Options,
+    (lowest_frequency_hz, top_frequency_hz): (f64, f64),
+    limits: Vec<Limit>,
+) -> CheckSetup {
     let mut distances_m = Vec::new();
     for distance_m in &options.distance {
         if !distances_m.contains(distance_m) {
@@ -214,7 +222,6 @@ fn setup(options: &Options, board: &Board, limits: Vec<Limit>) -> CheckSetup {
     if distances_m.is_empty() {
         distances_m = USUAL_DISTANCES_M.into();
     }
-    let (lowest_frequency_hz, top_frequency_hz) = scan_band_hz(board, &limits);
     CheckSetup {
         limits,
         distances_m,
