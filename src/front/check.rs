@@ -8,8 +8,7 @@ use ringfield::board::{Board, CableRun, Reading, UnusableNet, read_board};
 use ringfield::limit::{Limit, LimitAt, default_limits, limits_at};
 use ringfield::radiation::{Strongest, UNKNOWN_CABLE_LENGTHS_M};
 use ringfield::show::{
-    self, CheckReport, check_json, check_table, harmonics_csv, march_table, spectrum_picture,
-    waveform_csv, waveform_picture,
+    CheckReport, check_json, check_table, harmonics_csv, march_table, waveform_csv,
 };
 use ringfield::study::{
     CheckSetup, NetResult, RungNet, Verdict, board_antenna, far_fields, judge, ring, scan_band_hz,
@@ -19,6 +18,7 @@ use ringfield::text::Severity;
 
 use super::options::{self, SiteChoice, USUAL_DISTANCES_M};
 use super::output::Output;
+use super::pictures::pictures;
 use super::progress::Progress;
 use super::{Ending, Refusal, input, output};
 
@@ -345,38 +345,6 @@ fn outputs(options: &Options, report: &CheckReport, several: bool) -> Vec<Output
         );
     }
     outputs
-}
-
-/// The spectra and the waveform of one net, under names that begin alike.
-fn pictures(report: &CheckReport, net: &NetResult, stem: &Path) -> Vec<Output> {
-    let spectra = report.distances_m.iter().map(|distance_m| {
-        let distance = show::distance(*distance_m).replace(' ', "");
-        (
-            format!("-spectrum-{distance}"),
-            spectrum_picture(report, net, *distance_m),
-        )
-    });
-    let waveform = ("-waveform".to_string(), waveform_picture(report, net));
-    spectra
-        .chain([waveform])
-        .flat_map(|(name, picture)| {
-            let path = |ending: &str| {
-                let mut path = stem.as_os_str().to_os_string();
-                path.push(format!("{name}.{ending}"));
-                PathBuf::from(path)
-            };
-            [
-                Output {
-                    path: path("png"),
-                    contents: picture.png(),
-                },
-                Output {
-                    path: path("svg"),
-                    contents: picture.svg().into_bytes(),
-                },
-            ]
-        })
-        .collect()
 }
 
 /// What goes to standard output.

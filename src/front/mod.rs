@@ -5,6 +5,7 @@ mod input;
 pub mod limits;
 mod options;
 mod output;
+mod pictures;
 mod progress;
 
 use std::process::ExitCode;

@@ -9,6 +9,7 @@
 mod algebra;
 mod clamp;
 mod cluster;
+mod companion;
 mod delay;
 mod extrapolate;
 mod filter;

@@ -33,9 +33,14 @@ pub fn waveform_picture(report: &CheckReport, net: &NetResult) -> Picture {
     let mut picture = page(
         &format!("{}: one settled period", net.name),
         &format!(
-            "{} · clock {}",
+            "{} · clock {}{}",
             report.board,
-            words::frequency(net.clock_hz)
+            words::frequency(net.clock_hz),
+            if wave.pace.is_whole() {
+                ""
+            } else {
+                " · time at rest before each edge left out"
+            }
         ),
     );
     let entries: Vec<LegendEntry> = voltages
