@@ -80,34 +80,38 @@ const LANES: usize = 4;
 pub(super) struct Filter {
     /// Share of the present input in the present output.
     direct: f64,
-    decay: Vec<[f64; LANES]>,
-    gain: Vec<[f64; LANES]>,
-    /// What each relaxation's past will leave in the next output.
-    state: Vec<[f64; LANES]>,
+    blocks: Vec<Block>,
     past: f64,
+}
+
+/// Relaxations that are marched together.
+#[derive(Debug, Clone, Default)]
+struct Block {
+    decay: [f64; LANES],
+    gain: [f64; LANES],
+    /// What each relaxation's past will leave in the next output.
+    state: [f64; LANES],
 }
 
 impl Filter {
     /// A filter that has always had the input `start`.
     pub(super) fn new(relaxations: &Relaxations, step_s: f64, start: f64) -> Self {
-        let blocks = relaxations.terms.len().div_ceil(LANES);
+        let count = relaxations.terms.len().div_ceil(LANES);
         let mut filter = Self {
             direct: relaxations.direct,
-            decay: vec![[0.0; LANES]; blocks],
-            gain: vec![[0.0; LANES]; blocks],
-            state: vec![[0.0; LANES]; blocks],
+            blocks: vec![Block::default(); count],
             past: 0.0,
         };
         for (number, &(pole, residue)) in relaxations.terms.iter().enumerate() {
-            let (block, lane) = (number / LANES, number % LANES);
+            let (block, lane) = (&mut filter.blocks[number / LANES], number % LANES);
             let decay = (-pole * step_s).exp();
             let mean = -(-pole * step_s).exp_m1() / (pole * step_s);
             // Of an input that is straight between steps: the new end's and the old end's share.
             let (from_now, from_before) = (residue * (1.0 - mean), residue * (mean - decay));
             filter.direct += from_now;
-            filter.decay[block][lane] = decay;
-            filter.gain[block][lane] = decay * from_now + from_before;
-            filter.state[block][lane] = (residue - from_now) * start;
+            block.decay[lane] = decay;
+            block.gain[lane] = decay * from_now + from_before;
+            block.state[lane] = (residue - from_now) * start;
             filter.past += (residue - from_now) * start;
         }
         filter
@@ -125,17 +129,16 @@ impl Filter {
 
     /// Shows every value that has a say in what is still to come out.
     pub(super) fn visit(&mut self, visit: &mut impl FnMut(&mut f64)) {
-        self.state
-            .as_flattened_mut()
-            .iter_mut()
-            .for_each(&mut *visit);
+        for block in &mut self.blocks {
+            block.state.iter_mut().for_each(&mut *visit);
+        }
         visit(&mut self.past);
     }
 
     /// Takes the present input and goes on to the next step.
     pub(super) fn take(&mut self, input: f64) {
         let mut sums = [0.0; LANES];
-        for ((state, decay), gain) in self.state.iter_mut().zip(&self.decay).zip(&self.gain) {
+        for Block { decay, gain, state } in &mut self.blocks {
             for lane in 0..LANES {
                 state[lane] = decay[lane] * state[lane] + gain[lane] * input;
                 sums[lane] += state[lane];

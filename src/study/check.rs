@@ -237,6 +237,9 @@ fn worst_reading(harmonics: &[Harmonic], setup: &CheckSetup) -> Option<Worst> {
     worst
 }
 
+/// Bandwidth of the receiver from 30 MHz to 1 GHz (CISPR 16-1-1).
+const RECEIVER_BANDWIDTH_HZ: f64 = 120e3;
+
 /// What the user should know about the figures of a net.
 fn warnings(
     network: &Network,
@@ -256,6 +259,13 @@ fn warnings(
         warnings.push("has no receiver; its far end is open".into());
     }
     warnings.extend(electrical_length(network).map(str::to_owned));
+    if spectrum.clock_hz < RECEIVER_BANDWIDTH_HZ {
+        let lines = RECEIVER_BANDWIDTH_HZ / spectrum.clock_hz;
+        warnings.push(format!(
+            "has {lines:.1} harmonics in the receiver's bandwidth of 120 kHz at once: it may read up to {:.0} dB more than a single one",
+            20.0 * lines.log10()
+        ));
+    }
     if spectrum.is_empty() {
         warnings.push("has no harmonic in the scanned band".into());
     }
