@@ -6,7 +6,7 @@ use clap::Args;
 use rayon::prelude::*;
 use ringfield::board::{Board, CableRun, Reading, UnusableNet, read_board};
 use ringfield::limit::{Limit, LimitAt, default_limits, limits_at};
-use ringfield::radiation::{Strongest, UNKNOWN_CABLE_LENGTHS_M};
+use ringfield::radiation::{COMPARED_TO_HZ, Strongest, UNKNOWN_CABLE_LENGTHS_M};
 use ringfield::show::{
     CheckReport, check_json, check_table, harmonics_csv, march_table, waveform_csv,
 };
@@ -193,7 +193,10 @@ fn report(
     let report = CheckReport {
         board: board.title.clone(),
         site: setup.site,
-        remarks: cable_remarks(board),
+        remarks: cable_remarks(board)
+            .into_iter()
+            .chain(beyond_comparison(board, &setup))
+            .collect(),
         nets: check_all(board, &setup),
         distances_m: setup.distances_m,
         limits,
@@ -263,6 +266,15 @@ fn check_all(board: &Board, setup: &CheckSetup) -> Vec<NetResult> {
         .into_par_iter()
         .map(|(net, fields)| judge(net, &fields, setup))
         .collect()
+}
+
+/// What has to be said of frequencies at which nothing was compared.
+fn beyond_comparison(board: &Board, setup: &CheckSetup) -> Option<String> {
+    (board.plane.is_some() && setup.top_frequency_hz > COMPARED_TO_HZ).then(|| {
+        "Above 2 GHz the plane's and the cables' part in the figures has not been compared with any \
+         other solution."
+            .into()
+    })
 }
 
 /// What has to be said about the cables.

@@ -18,7 +18,7 @@ mod site;
 pub use large_plane::{LargePlane, field_toward};
 pub use layout::{Layout, Segment};
 pub use loop_area::loop_area_v_per_m;
-pub use plate_antenna::{PlateAntenna, UNKNOWN_CABLE_LENGTHS_M, WorstOf};
+pub use plate_antenna::{COMPARED_TO_HZ, PlateAntenna, UNKNOWN_CABLE_LENGTHS_M, WorstOf};
 pub use site::{FLOOR_ABSORBED_ABOVE_HZ, Site, TABLE_HEIGHT_M, two_ray_factors};
 
 use crate::LIGHT_SPEED_M_PER_S;

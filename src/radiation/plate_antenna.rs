@@ -12,6 +12,10 @@ use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
 use num_complex::Complex64;
 use std::f64::consts::TAU;
 
+/// Up to here one mesh serves, since a finer one costs as the third power of its cells.
+const COARSE_TO_HZ: f64 = 1e9;
+/// Up to here the solver has been compared with others; above, the mesh is that of this frequency.
+pub const COMPARED_TO_HZ: f64 = 2e9;
 /// What a cable of unknown length is tried with: a quarter and a half wave of the band's lower half.
 pub const UNKNOWN_CABLE_LENGTHS_M: [f64; 4] = [0.5, 1.0, 1.5, 2.0];
 /// Longest piece of a trace that one set of sample points serves.
@@ -58,13 +62,16 @@ enum Part {
     Both,
 }
 
-/// Several antennas of which the strongest counts, net by net and frequency by frequency.
+/// A board's antennas: one for each length that cables of unknown length are tried with, of which the strongest
+/// counts, net by net and frequency by frequency; and the same cut more finely for the upper frequencies.
 #[derive(Debug)]
-pub struct WorstOf(Vec<PlateAntenna>);
+pub struct WorstOf {
+    coarse: Vec<PlateAntenna>,
+    fine: Vec<PlateAntenna>,
+}
 
 impl WorstOf {
-    /// The antennas of a board some of whose cables have no known length: one for each of
-    /// [`UNKNOWN_CABLE_LENGTHS_M`], or a single one where every length is known.
+    /// The antennas of a plane and its cables up to a top frequency.
     pub fn new(plane: &Plane, cables: &[Cable], top_frequency_hz: f64) -> Self {
         let known = cables.iter().all(|cable| cable.length_m.is_some());
         let lengths_m = if known {
@@ -72,17 +79,27 @@ impl WorstOf {
         } else {
             &UNKNOWN_CABLE_LENGTHS_M
         };
-        let antenna = |&length_m: &f64| {
-            let cables: Vec<Cable> = cables
-                .iter()
-                .map(|cable| Cable {
-                    length_m: cable.length_m.or(Some(length_m)),
-                    ..cable.clone()
-                })
-                .collect();
-            PlateAntenna::new(plane, &cables, top_frequency_hz)
+        let antennas = |up_to_hz: f64| -> Vec<PlateAntenna> {
+            let antenna = |&length_m: &f64| {
+                let cables: Vec<Cable> = cables
+                    .iter()
+                    .map(|cable| Cable {
+                        length_m: cable.length_m.or(Some(length_m)),
+                        ..cable.clone()
+                    })
+                    .collect();
+                PlateAntenna::new(plane, &cables, up_to_hz)
+            };
+            lengths_m.iter().map(antenna).collect()
         };
-        Self(lengths_m.iter().map(antenna).collect())
+        Self {
+            coarse: antennas(top_frequency_hz.min(COARSE_TO_HZ)),
+            fine: if top_frequency_hz > COARSE_TO_HZ {
+                antennas(top_frequency_hz.min(COMPARED_TO_HZ))
+            } else {
+                Vec::new()
+            },
+        }
     }
 }
 
@@ -92,8 +109,13 @@ impl Antenna for WorstOf {
     }
 
     fn strongest(&self, frequency_hz: f64, nets: &[Vec<LitSegment>]) -> Vec<Strongest> {
+        let antennas = if frequency_hz > COARSE_TO_HZ {
+            &self.fine
+        } else {
+            &self.coarse
+        };
         let mut worst = vec![Strongest::default(); nets.len()];
-        for antenna in &self.0 {
+        for antenna in antennas {
             for (worst, other) in worst.iter_mut().zip(antenna.strongest(frequency_hz, nets)) {
                 if other.total_v >= worst.total_v {
                     *worst = other;
