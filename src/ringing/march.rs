@@ -16,8 +16,10 @@ const SETTLED: f64 = 1e-6;
 /// Losses are fitted from here on: what lies lower is not radiated, and its slow relaxations would keep a net long
 /// from its settled state.
 const LOWEST_LOSSY_HZ: f64 = 20e6;
-/// Where a net has not settled after this many states, a period apart, the next is extrapolated from them.
+/// Where a net has not settled after this many states, the next is extrapolated from them.
 const STATES: usize = 6;
+/// Extrapolations before the states are taken twice as far apart.
+const JUMPS_A_STRIDE: usize = 3;
 /// How changes are taken to shrink where only one is known.
 const USUAL_RATIO: f64 = 0.9;
 /// Most steps of one march, some tenths of a second's worth.
@@ -210,28 +212,36 @@ impl<'a> March<'a> {
             .map(|span| span.line.delay_s)
             .fold(0.0, f64::max);
         let memory = (longest_s / self.network.period_s).ceil().max(1.0) as usize;
+        // States a stride of changes apart. Slow relaxations show only over many periods, so that the stride
+        // doubles where a few jumps did not settle the net.
         let mut states = vec![self.state()];
+        let (mut jumps, mut since_state, mut since_jump) = (0, 0, 0);
         let mut last_change = None;
         while report.periods < most_periods && !report.settled {
             let change = (0..memory).fold(0.0, |most, _| self.one_period().max(most)) / swing_v;
             report.periods += memory;
-            states.push(self.state());
+            (since_state, since_jump) = (since_state + 1, since_jump + 1);
             // The first change after a jump is the jump itself.
-            if states.len() > 2 {
+            if since_jump > 1 {
                 // Changes that shrink by a constant ratio leave this sum of all that are still to come.
                 let ratio = last_change
                     .map_or(USUAL_RATIO, |last| change / last)
                     .min(1.0 - 1e-9);
-                report.residual = change.max(change * ratio / (1.0 - ratio));
+                report.residual = change.max(change * ratio / (1.0 - ratio)).min(1.0);
                 // A number that is none is not settled.
                 report.settled = report.residual < SETTLED && self.is_sound();
                 last_change = Some(change);
+            }
+            if since_state == 1 << (jumps / JUMPS_A_STRIDE) {
+                since_state = 0;
+                states.push(self.state());
             }
             if states.len() == STATES && !report.settled {
                 if let Some(state) = extrapolated(&states) {
                     self.set_state(&state);
                     last_change = None;
                 }
+                (since_jump, jumps) = (0, jumps + 1);
                 states = vec![self.state()];
             }
         }
