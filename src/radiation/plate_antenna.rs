@@ -31,8 +31,8 @@ const RIM_M: f64 = 0.5e-3;
 /// A board and its cables radiate so well that no resonance is sharper than about a tenth of its frequency: half of
 /// this off changes no field by more than 0.3 dB.
 const FREQUENCY_SHARE: f64 = 5e-3;
-/// Directions are looked at so many to the half turn, and twice as many for each radian from the middle to the
-/// farthest end; a parabola finds the peak between.
+/// Fewest and most directions to the half turn; between, two more for each radian of phase from the middle to the
+/// farthest end. A parabola finds the peak between directions.
 const STEPS_PER_HALF_TURN: [usize; 2] = [9, 18];
 
 /// A board's plane of finite size with its cables.
