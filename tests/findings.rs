@@ -6,7 +6,7 @@ use oracle::build::{clamped, driver, line, net, part, receiver, receiver_of, shu
 use ringfield::board::{Board, Clamp, Driver, Net, PathItem, ReceiverPart};
 use ringfield::limit::default_limits;
 use ringfield::radiation::Site;
-use ringfield::study::{CheckSetup, ReceiverSignal, Signal, judge, ring};
+use ringfield::study::{CheckSetup, ReceiverSignal, Signal, Unwatched, check};
 
 /// Flight time of the lines here.
 const T_S: f64 = 1e-9;
@@ -24,9 +24,9 @@ fn signal(net: &Net, top_frequency_hz: f64) -> Signal {
         title: String::new(),
         plane: None,
         cables: None,
-        nets: Vec::new(),
+        nets: vec![net.clone()],
     };
-    let result = judge(ring(net, &board, &setup), &[], &setup);
+    let result = check(&board, &setup, &Unwatched).swap_remove(0);
     assert!(result.march.settled, "{}: {:?}", net.name, result.march);
     result.signal
 }

@@ -6,14 +6,11 @@ use clap::Args;
 use rayon::prelude::*;
 use ringfield::board::{Board, CableRun, Reading, UnusableNet, read_board};
 use ringfield::limit::{Limit, LimitAt, default_limits, limits_at};
-use ringfield::radiation::{COMPARED_TO_HZ, Strongest, UNKNOWN_CABLE_LENGTHS_M};
+use ringfield::radiation::{COMPARED_TO_HZ, UNKNOWN_CABLE_LENGTHS_M};
 use ringfield::show::{
     CheckReport, check_json, check_table, harmonics_csv, march_table, waveform_csv,
 };
-use ringfield::study::{
-    CheckSetup, NetResult, RungNet, Verdict, board_antenna, far_fields, judge, ring, scan_band_hz,
-    shared_frequencies,
-};
+use ringfield::study::{CheckSetup, NetResult, Verdict, check, scan_band_hz};
 use ringfield::text::Severity;
 
 use super::options::{self, SiteChoice, USUAL_DISTANCES_M};
@@ -197,7 +194,7 @@ fn report(
             .into_iter()
             .chain(beyond_comparison(board, &setup))
             .collect(),
-        nets: check_all(board, &setup),
+        nets: check(board, &setup, &Progress::new()),
         distances_m: setup.distances_m,
         limits,
         unusable,
@@ -233,39 +230,6 @@ fn setup(
         top_frequency_hz: options.max_frequency.unwrap_or(top_frequency_hz),
         model_sigma_db: options.sigma,
     }
-}
-
-/// Every net's result in the order of the board; several at a time.
-fn check_all(board: &Board, setup: &CheckSetup) -> Vec<NetResult> {
-    let progress = Progress::new("nets", board.nets.len());
-    let rung: Vec<RungNet> = board
-        .nets
-        .par_iter()
-        .map(|net| progress.after(|| ring(net, board, setup)))
-        .collect();
-    drop(progress);
-
-    let antenna = board_antenna(board, setup.top_frequency_hz);
-    let shared = shared_frequencies(&rung, antenna.frequency_share());
-    let progress = Progress::new("frequencies", shared.len());
-    let at_frequency: Vec<Vec<Strongest>> = shared
-        .par_iter()
-        .map(|shared| progress.after(|| far_fields(antenna.as_ref(), &rung, shared)))
-        .collect();
-    drop(progress);
-
-    let mut of_nets: Vec<Vec<Strongest>> = vec![Vec::new(); rung.len()];
-    for (shared, fields) in shared.iter().zip(at_frequency) {
-        // Frequencies rise, so each net's harmonics come in order.
-        for (&(net, _), field) in shared.harmonics.iter().zip(fields) {
-            of_nets[net].push(field);
-        }
-    }
-    let together: Vec<(RungNet, Vec<Strongest>)> = rung.into_iter().zip(of_nets).collect();
-    together
-        .into_par_iter()
-        .map(|(net, fields)| judge(net, &fields, setup))
-        .collect()
 }
 
 /// What has to be said of frequencies at which nothing was compared.

@@ -3,6 +3,7 @@
 use super::Mechanism;
 use super::signal::signal;
 use super::verdict::{Verdict, chance_of_failing, total_sigma_db};
+use super::watch::Watch;
 use super::{FieldReading, Harmonic, NetResult, Worst};
 use crate::board::{Board, Net};
 use crate::limit::{Limit, LimitAt, limits_at};
@@ -12,6 +13,7 @@ use crate::radiation::{
 };
 use crate::ringing::{Network, Settled, settle};
 use crate::spectrum::{Spectrum, spectrum};
+use rayon::prelude::*;
 
 /// What to measure and against what.
 #[derive(Debug, Clone)]
@@ -28,6 +30,13 @@ pub struct CheckSetup {
     pub top_frequency_hz: f64,
     /// Spread of what is not modelled.
     pub model_sigma_db: f64,
+}
+
+/// Every net of a board, in its order, on the board's own antenna; several nets at a time.
+pub fn check(board: &Board, setup: &CheckSetup, watch: &dyn Watch) -> Vec<NetResult> {
+    let rung = ring_all(&board.nets, board, setup, watch);
+    let antenna = board_antenna(board, &rung, setup, watch);
+    judge_all(antenna.as_ref(), rung, setup, watch)
 }
 
 /// A net that has rung and settled, ready to be laid on an antenna.
@@ -64,29 +73,83 @@ pub fn ring(net: &Net, board: &Board, setup: &CheckSetup) -> RungNet {
     }
 }
 
-/// The antenna that a board is: its plane with its cables, or without a plane's size, a large plane.
-pub fn board_antenna(board: &Board, top_frequency_hz: f64) -> Box<dyn Antenna> {
+/// Ringing and spectrum of several nets, in their order.
+pub fn ring_all(
+    nets: &[Net],
+    board: &Board,
+    setup: &CheckSetup,
+    watch: &dyn Watch,
+) -> Vec<RungNet> {
+    watch.begin("nets", nets.len());
+    nets.par_iter()
+        .map(|net| {
+            let rung = ring(net, board, setup);
+            watch.step();
+            rung
+        })
+        .collect()
+}
+
+/// The antenna that a board is: its plane with its cables, or without a plane's size, a large plane. It serves
+/// these nets, and others with the same harmonics.
+pub fn board_antenna(
+    board: &Board,
+    _nets: &[RungNet],
+    setup: &CheckSetup,
+    _watch: &dyn Watch,
+) -> Box<dyn Antenna> {
     match &board.plane {
         Some(plane) => {
             let cables = board.cables.as_deref().unwrap_or_default();
-            Box::new(WorstOf::new(plane, cables, top_frequency_hz))
+            Box::new(WorstOf::new(plane, cables, setup.top_frequency_hz))
         }
         None => Box::new(LargePlane),
     }
 }
 
+/// Fields and margins of several nets on one antenna, in their order.
+pub fn judge_all(
+    antenna: &dyn Antenna,
+    nets: Vec<RungNet>,
+    setup: &CheckSetup,
+    watch: &dyn Watch,
+) -> Vec<NetResult> {
+    let shared = shared_frequencies(&nets, antenna.frequency_share());
+    watch.begin("frequencies", shared.len());
+    let at_frequency: Vec<Vec<Strongest>> = shared
+        .par_iter()
+        .map(|shared| {
+            let fields = far_fields(antenna, &nets, shared);
+            watch.step();
+            fields
+        })
+        .collect();
+    let mut of_nets: Vec<Vec<Strongest>> = vec![Vec::new(); nets.len()];
+    for (shared, fields) in shared.iter().zip(at_frequency) {
+        // Frequencies rise, so each net's harmonics come in order.
+        for (&(net, _), field) in shared.harmonics.iter().zip(fields) {
+            of_nets[net].push(field);
+        }
+    }
+    let together: Vec<(RungNet, Vec<Strongest>)> = nets.into_iter().zip(of_nets).collect();
+    together
+        .into_par_iter()
+        .map(|(net, fields)| judge(net, &fields, setup))
+        .collect()
+}
+
 /// One frequency with the nets that have a harmonic there or very near, so that the antenna is worked out once for
 /// all.
 #[derive(Debug, Clone, PartialEq)]
-pub struct SharedFrequency {
+struct SharedFrequency {
     /// The frequency.
-    pub frequency_hz: f64,
+    frequency_hz: f64,
     /// Number of a net and place of the harmonic in its spectrum.
-    pub harmonics: Vec<(usize, usize)>,
+    harmonics: Vec<(usize, usize)>,
 }
 
 /// All frequencies of some nets, rising. Those that lie closer together than `share` of themselves are one.
-pub fn shared_frequencies(nets: &[RungNet], share: f64) -> Vec<SharedFrequency> {
+fn shared_frequencies(nets: &[RungNet], share: f64) -> Vec<SharedFrequency> {
     let mut all: Vec<(f64, usize, usize)> = Vec::new();
     for (number, net) in nets.iter().enumerate() {
         let places = 0..net.spectrum.len();
@@ -114,11 +177,7 @@ pub fn shared_frequencies(nets: &[RungNet], share: f64) -> Vec<SharedFrequency> 
 }
 
 /// The strongest far field of every harmonic at one frequency, in the order of its list.
-pub fn far_fields(
-    antenna: &dyn Antenna,
-    nets: &[RungNet],
-    shared: &SharedFrequency,
-) -> Vec<Strongest> {
+fn far_fields(antenna: &dyn Antenna, nets: &[RungNet], shared: &SharedFrequency) -> Vec<Strongest> {
     let lit: Vec<Vec<LitSegment>> = shared
         .harmonics
         .iter()
@@ -131,7 +190,7 @@ pub fn far_fields(
 }
 
 /// Fields and margins of one net, from the strongest far field of each of its harmonics.
-pub fn judge(net: RungNet, far_fields: &[Strongest], setup: &CheckSetup) -> NetResult {
+fn judge(net: RungNet, far_fields: &[Strongest], setup: &CheckSetup) -> NetResult {
     let harmonics = harmonics(&net, far_fields, setup);
     let worst = worst_reading(&harmonics, setup);
     let chance = worst

@@ -4,16 +4,15 @@ mod band;
 mod check;
 mod signal;
 mod verdict;
+mod watch;
 
 pub use band::scan_band_hz;
-pub use check::{
-    CheckSetup, RungNet, SharedFrequency, board_antenna, far_fields, judge, ring,
-    shared_frequencies,
-};
+pub use check::{CheckSetup, RungNet, board_antenna, check, judge_all, ring, ring_all};
 pub use signal::{ClampSignal, ReceiverSignal, Signal};
 pub use verdict::{
     INSTRUMENT_SIGMA_DB, MODEL_SIGMA_DB, Verdict, chance_of_failing, total_sigma_db,
 };
+pub use watch::{Unwatched, Watch};
 
 use crate::ringing::{MarchReport, SettledWaveform};
 

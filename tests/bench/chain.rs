@@ -14,12 +14,16 @@ use ringfield::limit::default_limits;
 use ringfield::radiation::{Antenna, LargePlane, Layout, Site, lit_segments};
 use ringfield::ringing::{Network, settle};
 use ringfield::spectrum::spectrum;
-use ringfield::study::{CheckSetup, MODEL_SIGMA_DB, far_fields, judge, ring, shared_frequencies};
+use ringfield::study::{CheckSetup, MODEL_SIGMA_DB, Unwatched, judge_all, ring};
 
 const LOWEST_HZ: f64 = 30e6;
 const TOP_HZ: f64 = 1e9;
 
 fn main() {
+    let pool = rayon::ThreadPoolBuilder::new()
+        .num_threads(1)
+        .build_global();
+    pool.expect("the first pool");
     let (one, thousand) = (board(1), board(1000));
     println!("clamped nets on a 4 mil microstrip, lossy, 25-125 MHz, to 1 GHz; one thread");
     for (label, board, rounds) in [("one net", &one, 200), ("1 000 nets", &thousand, 1)] {
@@ -39,13 +43,7 @@ fn report(label: &str, board: &Board, rounds: u32) {
     };
     let check = |net: &Net| {
         let rung = vec![ring(net, board, &setup)];
-        let fields: Vec<_> = shared_frequencies(&rung, LargePlane.frequency_share())
-            .iter()
-            .flat_map(|shared| far_fields(&LargePlane, &rung, shared))
-            .collect();
-        rung.into_iter().for_each(|net| {
-            black_box(judge(net, &fields, &setup));
-        });
+        black_box(judge_all(&LargePlane, rung, &setup, &Unwatched));
     };
     // A first net fills the caches of plans and pages.
     check(&nets[0]);

@@ -1,0 +1,20 @@
+//! How far a long study has come, for whoever waits for it.
+
+/// Told while a study goes on. Calls come from several threads.
+pub trait Watch: Sync {
+    /// The next stretch of work: so many of something, named in the plural.
+    fn begin(&self, what: &'static str, count: usize);
+
+    /// One of them is done.
+    fn step(&self);
+}
+
+/// Tells nobody.
+#[derive(Debug, Clone, Copy, Default)]
+pub struct Unwatched;
+
+impl Watch for Unwatched {
+    fn begin(&self, _: &'static str, _: usize) {}
+
+    fn step(&self) {}
+}
