@@ -25,6 +25,7 @@ pub mod show;
 pub mod spectrum;
 pub mod study;
 pub mod text;
+pub mod watch;
 
 /// Speed of light in vacuum.
 pub(crate) const LIGHT_SPEED_M_PER_S: f64 = 299_792_458.0;

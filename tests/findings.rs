@@ -5,7 +5,7 @@ mod oracle;
 use oracle::build::{clamped, driver, line, net, part, receiver, receiver_of, shunt};
 use ringfield::board::{Board, Clamp, Driver, Net, PathItem, ReceiverPart};
 use ringfield::limit::default_limits;
-use ringfield::radiation::Site;
+use ringfield::radiation::{Heights, Site};
 use ringfield::study::{CheckSetup, ReceiverSignal, Signal, Unwatched, check};
 
 /// Flight time of the lines here.
@@ -16,6 +16,7 @@ fn signal(net: &Net, top_frequency_hz: f64) -> Signal {
         limits: default_limits(),
         distances_m: vec![3.0],
         site: Site::OpenArea,
+        heights: Heights::default(),
         lowest_frequency_hz: 30e6,
         top_frequency_hz,
         model_sigma_db: 5.0,

@@ -23,6 +23,7 @@ fn cable(length_m: f64, radius_m: f64) -> Wire {
         points_m: vec![[0.0, 0.05, 0.0], [-length_m, 0.05, 0.0]],
         radius_m,
         attached: true,
+        grounded: false,
     }
 }
 
@@ -218,7 +219,7 @@ fn near_edge(row: &Row) -> [bool; 3] {
 
 #[test]
 fn plate_agrees_with_boundary_elements() {
-    let structure = Structure::new(BOARD, &[], 1e9);
+    let structure = Structure::new(BOARD, &[], None, 1e9);
     println!(
         "{:?} cells, {} unknowns",
         structure.cells(),
@@ -232,7 +233,7 @@ fn plate_agrees_with_boundary_elements() {
 
 #[test]
 fn plate_with_cable_agrees_with_boundary_elements() {
-    let structure = Structure::new(BOARD, &[cable(1.0, 0.5e-3)], 1e9);
+    let structure = Structure::new(BOARD, &[cable(1.0, 0.5e-3)], None, 1e9);
     println!(
         "{:?} cells, {} unknowns",
         structure.cells(),
@@ -314,7 +315,7 @@ fn capacitance() {
         (BOARD, 5.222e-12),
     ];
     for (plate, expected_f) in cases {
-        let ratio = Structure::new(plate, &[], 1e9).capacitance_f() / expected_f;
+        let ratio = Structure::new(plate, &[], None, 1e9).capacitance_f() / expected_f;
         println!(
             "{} x {} m: {ratio:.5} of {expected_f:.4e} F",
             plate.length_m, plate.width_m
@@ -327,8 +328,14 @@ fn capacitance() {
 /// 0.3 dB.
 #[test]
 fn halving_the_mesh_changes_little() {
-    let plain = Structure::new(BOARD, &[], 1e9);
-    let fine = Structure::with_mesh(BOARD, &[], plain.cells().map(|cells| 2 * cells), 12.5e-3);
+    let plain = Structure::new(BOARD, &[], None, 1e9);
+    let fine = Structure::with_mesh(
+        BOARD,
+        &[],
+        None,
+        plain.cells().map(|cells| 2 * cells),
+        12.5e-3,
+    );
     for frequency_hz in [300e6, 1e9] {
         let fields = waves().map(|wave| wave.electric(frequency_hz));
         let found = plain.at(frequency_hz).respond(&fields);
@@ -371,7 +378,7 @@ fn halving_the_mesh_changes_little() {
 /// What a source in the cable delivers is what the sphere around it receives.
 #[test]
 fn power_balance() {
-    let structure = Structure::new(BOARD, &[cable(0.5, 2e-3)], 1e9);
+    let structure = Structure::new(BOARD, &[cable(0.5, 2e-3)], None, 1e9);
     for frequency_hz in [50e6, 200e6, 500e6, 1e9] {
         for distance_m in [0.1, 0.3] {
             let gap = structure.gap_v(0, distance_m);
@@ -418,8 +425,9 @@ fn reciprocity() {
         points_m: vec![[0.11, 0.1, 0.0], [0.11, 0.2, 0.0], [0.11, 0.2, -0.4]],
         radius_m: 1e-3,
         attached: true,
+        grounded: false,
     };
-    let structure = Structure::new(BOARD, &[cable(0.7, 2e-3), second], 1e9);
+    let structure = Structure::new(BOARD, &[cable(0.7, 2e-3), second], None, 1e9);
     let field = waves()[5].electric(frequency_hz);
     let solved = structure.at(frequency_hz);
     let sources = vec![
@@ -440,7 +448,7 @@ fn reciprocity() {
 #[test]
 fn pickup_of_a_point_serves_all_waves() {
     let frequency_hz = 600e6;
-    let structure = Structure::new(BOARD, &[cable(1.0, 2.5e-3)], 1e9);
+    let structure = Structure::new(BOARD, &[cable(1.0, 2.5e-3)], None, 1e9);
     let probe = structure.probe(0.043, 0.021);
     let charge = Complex64::new(1e9, 2e8);
     let current = [Complex64::new(0.0, 3.0), Complex64::new(-2.0, 0.5)];
@@ -467,7 +475,7 @@ fn magnetic_field_doubles_on_a_large_plate() {
             length_m: side_m,
             width_m: side_m,
         };
-        let structure = Structure::with_mesh(plate, &[], [cells, cells], 25e-3);
+        let structure = Structure::with_mesh(plate, &[], None, [cells, cells], 25e-3);
         let probe = structure.probe(side_m / 2.0, side_m / 2.0);
         let middle = [side_m / 2.0, side_m / 2.0, 0.0];
         let mut means = [Complex64::ZERO; 2];

@@ -11,7 +11,7 @@ use proptest::prelude::*;
 use proptest::test_runner::{Config, RngAlgorithm, TestRng, TestRunner};
 use ringfield::board::{DirectLine, Net, PathItem};
 use ringfield::radiation::{
-    Antenna, LargePlane, Layout, LitSegment, Segment, field_toward, loop_area_v_per_m,
+    Layout, LitSegment, Segment, field_toward, loop_area_v_per_m, strongest,
 };
 use ringfield::ringing::Network;
 use std::f64::consts::{FRAC_PI_2, PI, TAU};
@@ -25,7 +25,7 @@ fn db(ratio: f64) -> f64 {
 
 /// The largest far field over a large plane, times the distance.
 fn strongest_v(frequency_hz: f64, segments: Vec<LitSegment>) -> f64 {
-    LargePlane.strongest(frequency_hz, &[segments])[0].total_v
+    strongest(frequency_hz, &segments).total_v
 }
 
 /// A straight line whose wave speed is that of the whole material.

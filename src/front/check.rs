@@ -6,7 +6,7 @@ use clap::Args;
 use rayon::prelude::*;
 use ringfield::board::{Board, CableRun, Reading, UnusableNet, read_board};
 use ringfield::limit::{Limit, LimitAt, default_limits, limits_at};
-use ringfield::radiation::{COMPARED_TO_HZ, UNKNOWN_CABLE_LENGTHS_M};
+use ringfield::radiation::{COMPARED_TO_HZ, Heights, UNKNOWN_CABLE_LENGTHS_M};
 use ringfield::show::{
     CheckReport, check_json, check_table, harmonics_csv, march_table, waveform_csv,
 };
@@ -226,6 +226,7 @@ fn setup(
         limits,
         distances_m,
         site: options.site.into(),
+        heights: Heights::default(),
         lowest_frequency_hz,
         top_frequency_hz: options.max_frequency.unwrap_or(top_frequency_hz),
         model_sigma_db: options.sigma,

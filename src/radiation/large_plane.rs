@@ -13,14 +13,30 @@
 //! in strip-line", Proc. IEE 107C, 1960, 163-170) published for an open and a matched end.
 
 use super::peak::vertex;
-use super::{Antenna, LitSegment, Strongest};
+use super::site::TestSite;
+use super::{Antenna, Footing, Layout, LitNet, LitSegment, Reading, near_field_factor};
 use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
 use num_complex::Complex64;
 use std::f64::consts::{PI, TAU};
 
-/// The board's plane, taken as endless.
-#[derive(Debug, Clone, Copy, Default)]
-pub struct LargePlane;
+/// The board's plane, taken as endless, on a test site: the strongest field of free space times the highest factor
+/// that the floor may have.
+#[derive(Debug, Clone)]
+pub struct LargePlane {
+    /// Where the antenna stands.
+    pub test_site: TestSite,
+}
+
+/// A net's far field in free space towards its strongest direction, times the distance; volts rms.
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+pub struct Strongest {
+    /// The field.
+    pub total_v: f64,
+    /// What the loops between traces and plane make of it.
+    pub loops_v: f64,
+    /// What the charged traces make of it.
+    pub charges_v: f64,
+}
 
 /// Charge and current of a net as seen from one direction, volts when put into the field.
 #[derive(Debug, Clone, Copy, Default)]
@@ -72,21 +88,52 @@ impl Antenna for LargePlane {
         0.0
     }
 
-    fn strongest(&self, frequency_hz: f64, nets: &[Vec<LitSegment>]) -> Vec<Strongest> {
-        let scale = scale_ohm_per_m(frequency_hz);
-        let strongest = |segments: &Vec<LitSegment>| {
-            let peak = match positions_on_one_line(segments) {
-                Some(positions_m) => strongest_of_straight(frequency_hz, segments, &positions_m),
-                None => strongest_of_any(frequency_hz, segments),
-            };
-            Strongest {
-                total_v: scale * peak.squared.sqrt(),
-                loops_v: scale * peak.loops,
-                charges_v: scale * peak.charges,
-                cables_v: None,
-            }
+    fn lay(&self, _: &Layout) -> Footing {
+        Footing::default()
+    }
+
+    fn readings(&self, frequency_hz: f64, harmonics: &[LitNet]) -> Vec<Vec<Reading>> {
+        let TestSite {
+            site,
+            heights,
+            distances_m,
+        } = &self.test_site;
+        let at_distances: Vec<f64> = distances_m
+            .iter()
+            .map(|&distance_m| {
+                near_field_factor(frequency_hz, distance_m)
+                    * site.factor(heights, frequency_hz, distance_m)
+                    / distance_m
+            })
+            .collect();
+        let of_net = |net: &LitNet| {
+            let strongest = strongest(net.frequency_hz, &net.segments);
+            let distances = at_distances.iter();
+            distances
+                .map(|at_distance| Reading {
+                    field_v_per_m: at_distance * strongest.total_v,
+                    loops_v_per_m: at_distance * strongest.loops_v,
+                    charges_v_per_m: at_distance * strongest.charges_v,
+                    cables_v_per_m: None,
+                    aim: None,
+                })
+                .collect()
         };
-        nets.iter().map(strongest).collect()
+        harmonics.iter().map(of_net).collect()
+    }
+}
+
+/// The strongest far field of a net in free space.
+pub fn strongest(frequency_hz: f64, segments: &[LitSegment]) -> Strongest {
+    let scale = scale_ohm_per_m(frequency_hz);
+    let peak = match positions_on_one_line(segments) {
+        Some(positions_m) => strongest_of_straight(frequency_hz, segments, &positions_m),
+        None => strongest_of_any(frequency_hz, segments),
+    };
+    Strongest {
+        total_v: scale * peak.squared.sqrt(),
+        loops_v: scale * peak.loops,
+        charges_v: scale * peak.charges,
     }
 }
 

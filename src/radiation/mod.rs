@@ -6,20 +6,24 @@
 //! [`Antenna`]. A net is then a sum over its lines of charge times electric field and current times
 //! magnetic field.
 
-mod far_field;
 mod large_plane;
 mod layout;
 mod loop_area;
+mod own_plane;
 mod peak;
 pub mod plate;
-mod plate_antenna;
+mod rational;
 mod site;
 
-pub use large_plane::{LargePlane, field_toward};
+pub use large_plane::{LargePlane, Strongest, field_toward, strongest};
 pub use layout::{Layout, Segment};
 pub use loop_area::loop_area_v_per_m;
-pub use plate_antenna::{COMPARED_TO_HZ, PlateAntenna, UNKNOWN_CABLE_LENGTHS_M, WorstOf};
-pub use site::{FLOOR_ABSORBED_ABOVE_HZ, Site, TABLE_HEIGHT_M, two_ray_factors};
+pub use own_plane::{
+    Aim, COMPARED_TO_HZ, Footing, OwnPlane, ScanMap, UNKNOWN_CABLE_LENGTHS_M, cable_objection,
+};
+pub use site::{
+    FLOOR_ABSORBED_ABOVE_HZ, Heights, Polarisation, Site, TABLE_HEIGHT_M, TestSite, two_ray_factors,
+};
 
 use crate::LIGHT_SPEED_M_PER_S;
 use crate::line::WaveOnLine;
@@ -43,26 +47,43 @@ pub struct LitSegment<'a> {
     pub inward_v: Complex64,
 }
 
-/// A net's far field in free space towards its strongest direction, times the distance; volts rms.
+/// The field that a net makes at the antenna, rms: the largest over all places of a scan.
 #[derive(Debug, Clone, Copy, Default, PartialEq)]
-pub struct Strongest {
+pub struct Reading {
     /// The field.
-    pub total_v: f64,
+    pub field_v_per_m: f64,
     /// What the loops between traces and plane make of it, without cables.
-    pub loops_v: f64,
+    pub loops_v_per_m: f64,
     /// What the charged traces make of it, without cables.
-    pub charges_v: f64,
+    pub charges_v_per_m: f64,
     /// What the cables add: the difference to the field without them; `None` without cables.
-    pub cables_v: Option<f64>,
+    pub cables_v_per_m: Option<f64>,
+    /// Where the antenna reads it; `None` in free space and on a large plane, where it is not known.
+    pub aim: Option<Aim>,
 }
 
-/// What stands between nets and the receiver's antenna: the board's plane, whatever hangs on it.
+/// A net at one of its harmonics, ready for an antenna.
+#[derive(Debug, Clone)]
+pub struct LitNet<'a> {
+    /// The harmonic's frequency.
+    pub frequency_hz: f64,
+    /// Where the net lies on that antenna ([`Antenna::lay`]).
+    pub footing: &'a Footing,
+    /// Its segments, in the order of its layout.
+    pub segments: Vec<LitSegment<'a>>,
+}
+
+/// What stands between nets and the receiver's antenna: the board's plane, whatever hangs on it, and the site.
 pub trait Antenna: Sync {
-    /// How far apart frequencies may lie, as a share of themselves, to be taken as one.
+    /// How far apart frequencies may lie, as a share of themselves, to be read together.
     fn frequency_share(&self) -> f64;
 
-    /// The strongest far fields of several nets at one frequency.
-    fn strongest(&self, frequency_hz: f64, nets: &[Vec<LitSegment>]) -> Vec<Strongest>;
+    /// Lays a net on the antenna, once for all frequencies.
+    fn lay(&self, layout: &Layout) -> Footing;
+
+    /// The readings of several nets, each at its own frequency near a shared one, those of one frequency together:
+    /// for each net, one reading for each distance of the site.
+    fn readings(&self, frequency_hz: f64, harmonics: &[LitNet]) -> Vec<Vec<Reading>>;
 }
 
 /// The segments of a net, with the waves on them at the harmonic at a place of its spectrum.

@@ -24,27 +24,66 @@ pub enum Site {
     FreeSpace,
 }
 
+/// How the receiver's antenna lies.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Polarisation {
+    /// Level, across the line from the product.
+    Horizontal,
+    /// Upright.
+    Vertical,
+}
+
+/// Heights on the open-area site.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Heights {
+    /// Lowest point of the product over the floor.
+    pub table_m: f64,
+    /// Lowest and highest place of the antenna.
+    pub antenna_m: [f64; 2],
+}
+
+impl Default for Heights {
+    fn default() -> Self {
+        Self {
+            table_m: TABLE_HEIGHT_M,
+            antenna_m: [LOWEST_ANTENNA_M, HIGHEST_ANTENNA_M],
+        }
+    }
+}
+
+/// Where and how a scan is done.
+#[derive(Debug, Clone, PartialEq)]
+pub struct TestSite {
+    /// The kind of site.
+    pub site: Site,
+    /// Its heights.
+    pub heights: Heights,
+    /// Distances of the antenna, from the middle of the turntable.
+    pub distances_m: Vec<f64>,
+}
+
 impl Site {
     /// The highest reading over the antenna's heights and polarisations, as a multiple of the free-space
     /// field at the same level distance.
-    pub fn factor(self, frequency_hz: f64, distance_m: f64) -> f64 {
+    pub fn factor(self, heights: &Heights, frequency_hz: f64, distance_m: f64) -> f64 {
         if self == Self::FreeSpace || frequency_hz > FLOOR_ABSORBED_ABOVE_HZ {
             return 1.0;
         }
-        let [horizontal, vertical] = two_ray_factors(frequency_hz, distance_m, TABLE_HEIGHT_M);
+        let [horizontal, vertical] = two_ray_factors(frequency_hz, distance_m, heights);
         horizontal.max(vertical)
     }
 }
 
-/// The highest sum of the direct and the reflected ray over an antenna height of 1 m to 4 m, antenna
+/// The highest sum of the direct and the reflected ray over the antenna's heights, antenna
 /// level and upright, as a multiple of the free-space field at the same level distance; the floor
-/// conducts perfectly.
-pub fn two_ray_factors(frequency_hz: f64, distance_m: f64, source_height_m: f64) -> [f64; 2] {
+/// conducts perfectly and the source is a point at the table's height.
+pub fn two_ray_factors(frequency_hz: f64, distance_m: f64, heights: &Heights) -> [f64; 2] {
+    let [lowest_m, highest_m] = heights.antenna_m;
     let mut sums = [[0.0; 2]; HEIGHT_STEPS + 1];
     for (step, sum) in sums.iter_mut().enumerate() {
         let share = step as f64 / HEIGHT_STEPS as f64;
-        let antenna_m = LOWEST_ANTENNA_M + share * (HIGHEST_ANTENNA_M - LOWEST_ANTENNA_M);
-        *sum = two_rays(frequency_hz, distance_m, source_height_m, antenna_m);
+        let antenna_m = lowest_m + share * (highest_m - lowest_m);
+        *sum = two_rays(frequency_hz, distance_m, heights.table_m, antenna_m);
     }
     [0, 1].map(|way| {
         let peaks = sums
@@ -96,9 +135,13 @@ mod tests {
 
     #[test]
     fn both_site_tables_within_a_tenth_of_a_decibel() {
+        let source_at_1_m = Heights {
+            table_m: 1.0,
+            ..Heights::default()
+        };
         for (frequency_mhz, row) in NORMALISED_SITE_ATTENUATION {
             let computed = [3.0, 10.0].map(|distance_m| {
-                two_ray_factors(frequency_mhz * 1e6, distance_m, 1.0).map(|factor| {
+                two_ray_factors(frequency_mhz * 1e6, distance_m, &source_at_1_m).map(|factor| {
                     // 1 pW from a half-wave dipole: sqrt(49.2 P) / d
                     let field_uv_per_m = (49.2e-12_f64).sqrt() * 1e6 / distance_m * factor;
                     -20.0 * frequency_mhz.log10() + 48.92 - 20.0 * field_uv_per_m.log10()
@@ -128,8 +171,8 @@ mod tests {
 
     #[test]
     fn free_space_and_absorbed_floor_leave_the_field_alone() {
-        assert_eq!(Site::FreeSpace.factor(100e6, 3.0), 1.0);
-        assert_eq!(Site::OpenArea.factor(1.2e9, 3.0), 1.0);
-        assert!(Site::OpenArea.factor(100e6, 3.0) > 1.0);
+        assert_eq!(Site::FreeSpace.factor(&Heights::default(), 100e6, 3.0), 1.0);
+        assert_eq!(Site::OpenArea.factor(&Heights::default(), 1.2e9, 3.0), 1.0);
+        assert!(Site::OpenArea.factor(&Heights::default(), 100e6, 3.0) > 1.0);
     }
 }

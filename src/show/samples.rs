@@ -2,7 +2,7 @@
 
 use crate::board::UnusableNet;
 use crate::limit::{Band, Detector, Limit, LimitAt, limits_at};
-use crate::radiation::Site;
+use crate::radiation::{Aim, Polarisation, Site};
 use crate::ringing::{MarchReport, Pace, SettledWaveform, Stretch};
 use crate::study::{
     ClampSignal, FieldReading, Harmonic, Mechanism, NetResult, ReceiverSignal, Signal, Verdict,
@@ -119,6 +119,12 @@ pub(super) fn net(name: &str, clock_hz: f64, harmonics: usize) -> NetResult {
     }
 }
 
+const AIM: Option<Aim> = Some(Aim {
+    antenna_height_m: 1.4,
+    angle_deg: 130.0,
+    polarisation: Polarisation::Vertical,
+});
+
 pub(super) fn worst(margin_db: f64) -> Option<Worst> {
     Some(Worst {
         limit: "47 CFR 15.109 class B".into(),
@@ -129,6 +135,7 @@ pub(super) fn worst(margin_db: f64) -> Option<Worst> {
         limit_dbuv_per_m: 43.5,
         margin_db,
         mechanism: Mechanism::Charges,
+        aim: AIM,
     })
 }
 
@@ -182,6 +189,7 @@ fn harmonic(number: usize, clock_hz: f64, level_dbuv_per_m: f64) -> Harmonic {
                     loops_dbuv_per_m: Some(field - 6.0),
                     charges_dbuv_per_m: Some(field - 5.0),
                     cable_dbuv_per_m: None,
+                    aim: AIM,
                 }
             })
             .collect(),

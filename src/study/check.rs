@@ -3,16 +3,16 @@
 use super::Mechanism;
 use super::signal::signal;
 use super::verdict::{Verdict, chance_of_failing, total_sigma_db};
-use super::watch::Watch;
 use super::{FieldReading, Harmonic, NetResult, Worst};
 use crate::board::{Board, Net};
 use crate::limit::{Limit, LimitAt, limits_at};
 use crate::radiation::{
-    Antenna, LargePlane, Layout, LitSegment, Site, Strongest, WorstOf, lit_segments,
-    loop_area_v_per_m, near_field_factor,
+    Antenna, Footing, Heights, LargePlane, Layout, LitNet, OwnPlane, Reading, Site, TestSite,
+    lit_segments, loop_area_v_per_m,
 };
 use crate::ringing::{Network, Settled, settle};
 use crate::spectrum::{Spectrum, spectrum};
+use crate::watch::Watch;
 use rayon::prelude::*;
 
 /// What to measure and against what.
@@ -24,12 +24,25 @@ pub struct CheckSetup {
     pub distances_m: Vec<f64>,
     /// The test site.
     pub site: Site,
+    /// Its heights.
+    pub heights: Heights,
     /// Lowest frequency of the scan.
     pub lowest_frequency_hz: f64,
     /// Top frequency of the scan.
     pub top_frequency_hz: f64,
     /// Spread of what is not modelled.
     pub model_sigma_db: f64,
+}
+
+impl CheckSetup {
+    /// Where the antenna stands.
+    pub fn test_site(&self) -> TestSite {
+        TestSite {
+            site: self.site,
+            heights: self.heights,
+            distances_m: self.distances_m.clone(),
+        }
+    }
 }
 
 /// Every net of a board, in its order, on the board's own antenna; several nets at a time.
@@ -94,16 +107,27 @@ pub fn ring_all(
 /// these nets, and others with the same harmonics.
 pub fn board_antenna(
     board: &Board,
-    _nets: &[RungNet],
+    nets: &[RungNet],
     setup: &CheckSetup,
-    _watch: &dyn Watch,
+    watch: &dyn Watch,
 ) -> Box<dyn Antenna> {
+    let test_site = setup.test_site();
     match &board.plane {
         Some(plane) => {
+            let frequencies_hz: Vec<f64> = shared_frequencies(nets, 0.0)
+                .iter()
+                .map(|shared| shared.frequency_hz)
+                .collect();
             let cables = board.cables.as_deref().unwrap_or_default();
-            Box::new(WorstOf::new(plane, cables, setup.top_frequency_hz))
+            Box::new(OwnPlane::new(
+                plane,
+                cables,
+                test_site,
+                &frequencies_hz,
+                watch,
+            ))
         }
-        None => Box::new(LargePlane),
+        None => Box::new(LargePlane { test_site }),
     }
 }
 
@@ -115,23 +139,27 @@ pub fn judge_all(
     watch: &dyn Watch,
 ) -> Vec<NetResult> {
     let shared = shared_frequencies(&nets, antenna.frequency_share());
+    let footings: Vec<Footing> = nets
+        .par_iter()
+        .map(|net| antenna.lay(&net.layout))
+        .collect();
     watch.begin("frequencies", shared.len());
-    let at_frequency: Vec<Vec<Strongest>> = shared
+    let at_frequency: Vec<Vec<Vec<Reading>>> = shared
         .par_iter()
         .map(|shared| {
-            let fields = far_fields(antenna, &nets, shared);
+            let fields = readings(antenna, &nets, &footings, shared);
             watch.step();
             fields
         })
         .collect();
-    let mut of_nets: Vec<Vec<Strongest>> = vec![Vec::new(); nets.len()];
+    let mut of_nets: Vec<Vec<Vec<Reading>>> = vec![Vec::new(); nets.len()];
     for (shared, fields) in shared.iter().zip(at_frequency) {
         // Frequencies rise, so each net's harmonics come in order.
         for (&(net, _), field) in shared.harmonics.iter().zip(fields) {
             of_nets[net].push(field);
         }
     }
-    let together: Vec<(RungNet, Vec<Strongest>)> = nets.into_iter().zip(of_nets).collect();
+    let together: Vec<(RungNet, Vec<Vec<Reading>>)> = nets.into_iter().zip(of_nets).collect();
     together
         .into_par_iter()
         .map(|(net, fields)| judge(net, &fields, setup))
@@ -176,22 +204,31 @@ fn shared_frequencies(nets: &[RungNet], share: f64) -> Vec<SharedFrequency> {
     shared
 }
 
-/// The strongest far field of every harmonic at one frequency, in the order of its list.
-fn far_fields(antenna: &dyn Antenna, nets: &[RungNet], shared: &SharedFrequency) -> Vec<Strongest> {
-    let lit: Vec<Vec<LitSegment>> = shared
+/// The readings of the harmonics that share a frequency, in the order of its list, at every distance.
+fn readings(
+    antenna: &dyn Antenna,
+    nets: &[RungNet],
+    footings: &[Footing],
+    shared: &SharedFrequency,
+) -> Vec<Vec<Reading>> {
+    let lit: Vec<LitNet> = shared
         .harmonics
         .iter()
         .map(|&(number, place)| {
             let net = &nets[number];
-            lit_segments(&net.network, &net.layout, &net.spectrum, place)
+            LitNet {
+                frequency_hz: net.spectrum.frequency_hz(place),
+                footing: &footings[number],
+                segments: lit_segments(&net.network, &net.layout, &net.spectrum, place),
+            }
         })
         .collect();
-    antenna.strongest(shared.frequency_hz, &lit)
+    antenna.readings(shared.frequency_hz, &lit)
 }
 
-/// Fields and margins of one net, from the strongest far field of each of its harmonics.
-fn judge(net: RungNet, far_fields: &[Strongest], setup: &CheckSetup) -> NetResult {
-    let harmonics = harmonics(&net, far_fields, setup);
+/// Fields and margins of one net, from the readings of each of its harmonics.
+fn judge(net: RungNet, readings: &[Vec<Reading>], setup: &CheckSetup) -> NetResult {
+    let harmonics = harmonics(&net, readings, setup);
     let worst = worst_reading(&harmonics, setup);
     let chance = worst
         .as_ref()
@@ -211,29 +248,26 @@ fn judge(net: RungNet, far_fields: &[Strongest], setup: &CheckSetup) -> NetResul
 }
 
 /// The harmonics with their fields at every distance.
-fn harmonics(net: &RungNet, far_fields: &[Strongest], setup: &CheckSetup) -> Vec<Harmonic> {
+fn harmonics(net: &RungNet, readings: &[Vec<Reading>], setup: &CheckSetup) -> Vec<Harmonic> {
     let spectrum = &net.spectrum;
     let area_m2 = net.layout.loop_area_m2();
-    far_fields
+    readings
         .iter()
         .enumerate()
-        .map(|(place, strongest)| {
+        .map(|(place, at_distances)| {
             let frequency_hz = spectrum.frequency_hz(place);
             let driver_current_a = spectrum.driver_a[place].norm();
-            let reading = |&distance_m: &f64| {
-                let at_distance = near_field_factor(frequency_hz, distance_m)
-                    * setup.site.factor(frequency_hz, distance_m)
-                    / distance_m;
-                let level = |far_field_v: f64| level_dbuv_per_m(far_field_v * at_distance);
+            let reading = |(&distance_m, reading): (&f64, &Reading)| {
                 let loop_v_per_m =
                     loop_area_v_per_m(frequency_hz, area_m2, driver_current_a, distance_m);
                 FieldReading {
                     distance_m,
-                    field_dbuv_per_m: level(strongest.total_v),
+                    field_dbuv_per_m: level_dbuv_per_m(reading.field_v_per_m),
                     loop_area_dbuv_per_m: level_dbuv_per_m(loop_v_per_m),
-                    loops_dbuv_per_m: level(strongest.loops_v),
-                    charges_dbuv_per_m: level(strongest.charges_v),
-                    cable_dbuv_per_m: strongest.cables_v.and_then(level),
+                    loops_dbuv_per_m: level_dbuv_per_m(reading.loops_v_per_m),
+                    charges_dbuv_per_m: level_dbuv_per_m(reading.charges_v_per_m),
+                    cable_dbuv_per_m: reading.cables_v_per_m.and_then(level_dbuv_per_m),
+                    aim: reading.aim,
                 }
             };
             Harmonic {
@@ -246,7 +280,12 @@ fn harmonics(net: &RungNet, far_fields: &[Strongest], setup: &CheckSetup) -> Vec
                     .iter()
                     .map(|phasor| phasor.norm())
                     .collect(),
-                fields: setup.distances_m.iter().map(reading).collect(),
+                fields: setup
+                    .distances_m
+                    .iter()
+                    .zip(at_distances)
+                    .map(reading)
+                    .collect(),
             }
         })
         .collect()
@@ -288,6 +327,7 @@ fn worst_reading(harmonics: &[Harmonic], setup: &CheckSetup) -> Option<Worst> {
                         limit_dbuv_per_m,
                         margin_db,
                         mechanism: Mechanism::ruling(reading),
+                        aim: reading.aim,
                     });
                 }
             }

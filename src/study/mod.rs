@@ -4,16 +4,16 @@ mod band;
 mod check;
 mod signal;
 mod verdict;
-mod watch;
 
+pub use crate::watch::{Unwatched, Watch};
 pub use band::scan_band_hz;
 pub use check::{CheckSetup, RungNet, board_antenna, check, judge_all, ring, ring_all};
 pub use signal::{ClampSignal, ReceiverSignal, Signal};
 pub use verdict::{
     INSTRUMENT_SIGMA_DB, MODEL_SIGMA_DB, Verdict, chance_of_failing, total_sigma_db,
 };
-pub use watch::{Unwatched, Watch};
 
+use crate::radiation::Aim;
 use crate::ringing::{MarchReport, SettledWaveform};
 
 /// Every output carries this.
@@ -63,6 +63,8 @@ pub struct Worst {
     pub margin_db: f64,
     /// What makes most of the field.
     pub mechanism: Mechanism,
+    /// Where the antenna reads it, where that is known.
+    pub aim: Option<Aim>,
 }
 
 /// What a field is made of.
@@ -131,4 +133,6 @@ pub struct FieldReading {
     pub charges_dbuv_per_m: Option<f64>,
     /// What the cables add; `None` where they are not in the figure.
     pub cable_dbuv_per_m: Option<f64>,
+    /// Where the antenna reads it, where that is known.
+    pub aim: Option<Aim>,
 }

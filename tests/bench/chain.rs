@@ -11,7 +11,7 @@ use std::time::{Duration, Instant};
 use ringfield::board::read_board;
 use ringfield::board::{Board, Net};
 use ringfield::limit::default_limits;
-use ringfield::radiation::{Antenna, LargePlane, Layout, Site, lit_segments};
+use ringfield::radiation::{Heights, LargePlane, Layout, Site, lit_segments, strongest};
 use ringfield::ringing::{Network, settle};
 use ringfield::spectrum::spectrum;
 use ringfield::study::{CheckSetup, MODEL_SIGMA_DB, Unwatched, judge_all, ring};
@@ -37,13 +37,17 @@ fn report(label: &str, board: &Board, rounds: u32) {
         limits: default_limits(),
         distances_m: vec![3.0, 10.0],
         site: Site::OpenArea,
+        heights: Heights::default(),
         lowest_frequency_hz: LOWEST_HZ,
         top_frequency_hz: TOP_HZ,
         model_sigma_db: MODEL_SIGMA_DB,
     };
+    let antenna = LargePlane {
+        test_site: setup.test_site(),
+    };
     let check = |net: &Net| {
         let rung = vec![ring(net, board, &setup)];
-        black_box(judge_all(&LargePlane, rung, &setup, &Unwatched));
+        black_box(judge_all(&antenna, rung, &setup, &Unwatched));
     };
     // A first net fills the caches of plans and pages.
     check(&nets[0]);
@@ -77,7 +81,7 @@ fn report(label: &str, board: &Board, rounds: u32) {
     let radiation = time(&spectra, rounds, |(network, layout, spectrum)| {
         let at = |place| {
             let lit = lit_segments(network, layout, spectrum, place);
-            LargePlane.strongest(spectrum.frequency_hz(place), &[lit])
+            strongest(spectrum.frequency_hz(place), &lit)
         };
         black_box((0..spectrum.len()).map(at).collect::<Vec<_>>());
     });

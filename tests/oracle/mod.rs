@@ -6,6 +6,7 @@
 #![allow(dead_code)]
 
 pub mod build;
+pub mod lit;
 pub mod published;
 
 use num_complex::Complex64;

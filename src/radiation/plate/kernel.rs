@@ -7,12 +7,14 @@
 //! systems", IEEE Trans. MTT 21, 1973, 76-82). Other close pairs take the closed potential of one and
 //! Gauss points on the other, distant ones the first terms of the multipole series.
 
-/// A piece of conductor: a rectangle in the plane z = 0, sides along x and y, or a thin straight wire.
+use super::Floor;
+
+/// A piece of conductor: a level rectangle, sides along x and y, or a thin straight wire.
 #[derive(Debug, Clone, Copy)]
 pub enum Piece {
     /// Centre and half sides in metres.
     Rectangle {
-        centre_m: [f64; 2],
+        centre_m: [f64; 3],
         half_m: [f64; 2],
     },
     /// Ends and radius in metres.
@@ -36,10 +38,10 @@ const GAUSS: [(f64, f64); 4] = [
 ];
 
 impl Piece {
-    /// The rectangle from and to places along x and along y, metres.
+    /// The rectangle in z = 0 from and to places along x and along y, metres.
     pub fn rectangle([[x0, x1], [y0, y1]]: [[f64; 2]; 2]) -> Self {
         Self::Rectangle {
-            centre_m: [(x0 + x1) / 2.0, (y0 + y1) / 2.0],
+            centre_m: [(x0 + x1) / 2.0, (y0 + y1) / 2.0, 0.0],
             half_m: [(x1 - x0) / 2.0, (y1 - y0) / 2.0],
         }
     }
@@ -47,9 +49,7 @@ impl Piece {
     /// Middle point, metres.
     pub fn centre_m(&self) -> [f64; 3] {
         match *self {
-            Self::Rectangle {
-                centre_m: [x, y], ..
-            } => [x, y, 0.0],
+            Self::Rectangle { centre_m, .. } => centre_m,
             Self::Line { from_m, to_m, .. } => {
                 std::array::from_fn(|axis| (from_m[axis] + to_m[axis]) / 2.0)
             }
@@ -61,6 +61,25 @@ impl Piece {
         match *self {
             Self::Rectangle { half_m, .. } => 4.0 * half_m[0] * half_m[1],
             Self::Line { from_m, to_m, .. } => norm(difference(to_m, from_m)),
+        }
+    }
+
+    /// Its image in the floor.
+    pub fn mirrored(&self, floor: Floor) -> Self {
+        match *self {
+            Self::Rectangle { centre_m, half_m } => Self::Rectangle {
+                centre_m: floor.mirrored_m(centre_m),
+                half_m,
+            },
+            Self::Line {
+                from_m,
+                to_m,
+                radius_m,
+            } => Self::Line {
+                from_m: floor.mirrored_m(from_m),
+                to_m: floor.mirrored_m(to_m),
+                radius_m,
+            },
         }
     }
 
@@ -132,6 +151,9 @@ fn between_rectangles(a: &Piece, b: &Piece) -> f64 {
     else {
         unreachable!("two rectangles");
     };
+    if centre_m[2] != other_m[2] {
+        return over_rectangle(a, |point| from_rectangle(b, point, 0.0));
+    }
     let along = |axis: usize| {
         differences(
             centre_m[axis],
@@ -160,7 +182,7 @@ fn from_rectangle(rectangle: &Piece, point: [f64; 3], radius_m: f64) -> f64 {
     let Piece::Rectangle { centre_m, half_m } = *rectangle else {
         unreachable!("a rectangle");
     };
-    let z = point[2].hypot(radius_m);
+    let z = (point[2] - centre_m[2]).hypot(radius_m);
     let mut sum = 0.0;
     for sign_u in [-1.0, 1.0] {
         for sign_v in [-1.0, 1.0] {
@@ -236,6 +258,27 @@ fn over_line(line: &Piece, value: impl Fn([f64; 3], f64) -> f64) -> f64 {
         .sum()
 }
 
+/// Mean over a rectangle of a function of its points.
+fn over_rectangle(rectangle: &Piece, value: impl Fn([f64; 3]) -> f64) -> f64 {
+    let Piece::Rectangle { centre_m, half_m } = *rectangle else {
+        unreachable!("a rectangle");
+    };
+    let [x, y, z] = centre_m;
+    let row = |at: f64| Piece::Line {
+        from_m: [x - half_m[0], y + at, z],
+        to_m: [x + half_m[0], y + at, z],
+        radius_m: 0.0,
+    };
+    let column = Piece::Line {
+        from_m: [-half_m[1], 0.0, 0.0],
+        to_m: [half_m[1], 0.0, 0.0],
+        radius_m: 0.0,
+    };
+    over_line(&column, |point, _| {
+        over_line(&row(point[0]), |point, _| value(point))
+    })
+}
+
 pub fn difference(a: [f64; 3], b: [f64; 3]) -> [f64; 3] {
     std::array::from_fn(|axis| a[axis] - b[axis])
 }
@@ -288,7 +331,7 @@ mod tests {
                         [
                             centre_m[0] + s * half_m[0],
                             centre_m[1] + t * half_m[1],
-                            0.0,
+                            centre_m[2],
                         ]
                     })
                     .collect(),
@@ -328,7 +371,13 @@ mod tests {
         let wire = line([-0.001, 0.005, 0.0], [-0.02, 0.005, 0.0]);
         let hanging = line([-0.022, 0.005, 0.0], [-0.022, 0.005, -0.03]);
         let beside = line([-0.001, 0.015, 0.0], [-0.02, 0.015, 0.0]);
+        let below = long.mirrored(Floor {
+            axis: 2,
+            at_m: -0.004,
+        });
         let pairs = [
+            (square, below),
+            (hanging, below),
             (square, long),
             (square, wire),
             (long, hanging),

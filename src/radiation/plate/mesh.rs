@@ -8,7 +8,7 @@
 
 use super::axis::Axis;
 use super::kernel::{Piece, difference, norm};
-use super::{Plate, Wire};
+use super::{Floor, Plate, Wire};
 
 /// How far a wire's first point may be from the edge, metres.
 const ON_EDGE_M: f64 = 1e-6;
@@ -53,6 +53,8 @@ pub struct Chain {
     pub branches: Vec<(usize, f64)>,
     /// Length, metres.
     pub length_m: f64,
+    /// Whether it ends on the floor.
+    pub grounded: bool,
 }
 
 /// All nodes and branches.
@@ -123,6 +125,25 @@ impl Mesh {
         into
     }
 
+    /// The images in a floor of all nodes and branches.
+    pub fn image(&self, floor: Floor) -> (Vec<Node>, Vec<Branch>) {
+        let mirrored = |pieces: &[(f64, Piece)]| -> Vec<(f64, Piece)> {
+            let pieces = pieces.iter();
+            pieces
+                .map(|(share, piece)| (*share, piece.mirrored(floor)))
+                .collect()
+        };
+        let branch = |branch: &Branch| Branch {
+            pieces: mirrored(&branch.pieces),
+            ends: branch.ends.clone(),
+            along_m: floor.image_way(branch.along_m),
+        };
+        (
+            self.nodes.iter().map(|node| mirrored(node)).collect(),
+            self.branches.iter().map(branch).collect(),
+        )
+    }
+
     fn add_cells(&mut self) {
         let [x, y] = &self.axes;
         for j in 0..y.cells {
@@ -172,7 +193,9 @@ impl Mesh {
             radius_m: wire.radius_m,
         };
         let first = self.nodes.len();
-        self.nodes.extend(vec![Node::new(); points.len()]);
+        // The floor is at no potential, and a node on it would hold no charge.
+        let held = points.len() - usize::from(wire.grounded);
+        self.nodes.extend(vec![Node::new(); held]);
         let mut branches = Vec::new();
         if wire.attached {
             branches.push((self.branches.len(), 0.0));
@@ -186,12 +209,15 @@ impl Mesh {
             branches.push((self.branches.len(), length_m + segment_m / 2.0));
             length_m += segment_m;
             let middle = std::array::from_fn(|axis| (pair[0][axis] + pair[1][axis]) / 2.0);
-            let node = first + place;
-            self.nodes[node].push((segment_m, line(pair[0], middle)));
-            self.nodes[node + 1].push((segment_m, line(middle, pair[1])));
+            let halves = [(pair[0], middle, -1.0), (middle, pair[1], 1.0)];
+            let mut ends = Vec::new();
+            for (node, (from_m, to_m, share)) in (first + place..first + held).zip(halves) {
+                self.nodes[node].push((segment_m, line(from_m, to_m)));
+                ends.push((node, share));
+            }
             self.branches.push(Branch {
                 pieces: vec![(1.0, line(pair[0], pair[1]))],
-                ends: vec![(node, -1.0), (node + 1, 1.0)],
+                ends,
                 along_m,
             });
         }
@@ -201,7 +227,11 @@ impl Mesh {
                 *share /= all;
             }
         }
-        self.chains.push(Chain { branches, length_m });
+        self.chains.push(Chain {
+            branches,
+            length_m,
+            grounded: wire.grounded,
+        });
     }
 
     /// The branch that joins the plate to a wire's first node.
@@ -305,6 +335,7 @@ mod tests {
             points_m: vec![[from[0], from[1], 0.0], [to[0], to[1], 0.0]],
             radius_m: 1e-3,
             attached: true,
+            grounded: false,
         }
     }
 
@@ -357,6 +388,7 @@ mod tests {
             points_m: vec![[0.0, 0.05, 0.0], [-0.1, 0.05, 0.0], [-0.1, 0.05, -0.06]],
             radius_m: 1e-3,
             attached: true,
+            grounded: false,
         };
         let mesh = mesh(&[wire]);
         let chain = &mesh.chains[0];

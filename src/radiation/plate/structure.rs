@@ -12,10 +12,10 @@
 
 use super::axis::Axis;
 use super::kernel::{Piece, difference, dot, mean_inverse_distance_per_m, norm};
-use super::mesh::{Branch, Mesh, centre_m};
+use super::mesh::{Branch, Mesh, Node, centre_m};
 use super::solve::{Factors, Symmetric};
 use super::surface::{Currents, Probe};
-use super::{Plate, Wire};
+use super::{Floor, Plate, Wire};
 use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
 use num_complex::Complex64;
 use std::f64::consts::{PI, TAU};
@@ -43,11 +43,15 @@ pub struct BranchPlace {
 #[derive(Debug, Clone)]
 pub struct Structure {
     pub(super) mesh: Mesh,
-    into_cells: Vec<Vec<(usize, f64)>>,
+    pub(super) into_cells: Vec<Vec<(usize, f64)>>,
     /// Between each node and those from it on.
     nodes: Vec<Pair>,
     /// The same between branches, with the scalar product of their lengths; none between perpendicular ones.
     branches: Vec<Option<(Pair, f64)>>,
+    pub(super) floor: Option<Floor>,
+    /// As `nodes` and `branches`, the second of each two being its image in the floor; empty without one.
+    node_images: Vec<Pair>,
+    branch_images: Vec<Option<(Pair, f64)>>,
 }
 
 /// Two nodes or two branches.
@@ -91,7 +95,7 @@ impl Structure {
     ///
     /// # Panics
     /// If an attached wire does not begin on an edge of the plate.
-    pub fn new(plate: Plate, wires: &[Wire], top_frequency_hz: f64) -> Self {
+    pub fn new(plate: Plate, wires: &[Wire], floor: Option<Floor>, top_frequency_hz: f64) -> Self {
         let wavelength_m = LIGHT_SPEED_M_PER_S / top_frequency_hz;
         let sides_m = [plate.length_m, plate.width_m];
         let longer_m = plate.length_m.max(plate.width_m);
@@ -112,37 +116,45 @@ impl Structure {
             Axis::fitted(side_m, cells, &roots_m).cells
         });
         let segment_m = SEGMENT_M.min(SEGMENT_WAVELENGTHS * wavelength_m);
-        Self::with_mesh(plate, wires, cells, segment_m)
+        Self::with_mesh(plate, wires, floor, cells, segment_m)
     }
 
     /// The same with a given number of cells along x and y and a longest wire segment.
     ///
     /// # Panics
     /// If an attached wire does not begin on an edge of the plate.
-    pub fn with_mesh(plate: Plate, wires: &[Wire], cells: [usize; 2], segment_m: f64) -> Self {
+    pub fn with_mesh(
+        plate: Plate,
+        wires: &[Wire],
+        floor: Option<Floor>,
+        cells: [usize; 2],
+        segment_m: f64,
+    ) -> Self {
         let sides_m = [plate.length_m, plate.width_m];
         let axes = [0, 1].map(|axis| Axis {
             length_m: sides_m[axis],
             cells: cells[axis],
         });
-        Self::of(Mesh::new(axes, wires, segment_m))
+        Self::of(Mesh::new(axes, wires, segment_m), floor)
     }
 
-    pub(super) fn of(mesh: Mesh) -> Self {
-        let mut nodes = Vec::new();
-        for (first, a) in mesh.nodes.iter().enumerate() {
-            nodes.extend(mesh.nodes[first..].iter().map(|b| Pair::new(a, b)));
-        }
-        let mut branches = Vec::new();
-        for (first, a) in mesh.branches.iter().enumerate() {
-            let others = mesh.branches[first..].iter();
-            branches.extend(others.map(|b| between_branches(a, b)));
-        }
+    pub(super) fn of(mesh: Mesh, floor: Option<Floor>) -> Self {
+        let images = floor.map(|floor| mesh.image(floor));
+        let (node_images, branch_images) = match &images {
+            Some((nodes, branches)) => (
+                between_nodes(&mesh.nodes, nodes),
+                between_branches(&mesh.branches, branches),
+            ),
+            None => (Vec::new(), Vec::new()),
+        };
         Self {
             into_cells: mesh.flows_into_cells(),
+            nodes: between_nodes(&mesh.nodes, &mesh.nodes),
+            branches: between_branches(&mesh.branches, &mesh.branches),
             mesh,
-            nodes,
-            branches,
+            floor,
+            node_images,
+            branch_images,
         }
     }
 
@@ -195,9 +207,13 @@ impl Structure {
         let nodes = self.mesh.nodes.len();
         let mut potentials = vec![Complex64::ZERO; nodes * nodes];
         let mut pairs = self.nodes.iter();
+        let mut images = self.node_images.iter();
         for first in 0..nodes {
             for (second, pair) in (first..nodes).zip(pairs.by_ref()) {
-                let potential = pair.retarded_per_m(k) / (k * k);
+                let mut potential = pair.retarded_per_m(k) / (k * k);
+                if let Some(image) = images.next() {
+                    potential -= image.retarded_per_m(k) / (k * k);
+                }
                 potentials[first * nodes + second] = potential;
                 potentials[second * nodes + first] = potential;
             }
@@ -206,6 +222,7 @@ impl Structure {
         let mut matrix = Symmetric::zeros(branches.len());
         let mut potential = vec![Complex64::ZERO; nodes];
         let mut pairs = self.branches.iter();
+        let mut images = self.branch_images.iter();
         for (column, branch) in branches.iter().enumerate() {
             potential.fill(Complex64::ZERO);
             for &(node, share) in &branch.ends {
@@ -218,7 +235,8 @@ impl Structure {
                 let ends = branches[row].ends.iter();
                 let mut entry: Complex64 =
                     ends.map(|&(node, share)| -share * potential[node]).sum();
-                if let Some((pair, lengths_m2)) = pair {
+                let image = images.next().and_then(Option::as_ref);
+                for (pair, lengths_m2) in [pair.as_ref(), image].into_iter().flatten() {
                     let lengths_m2 = means[row] * means[column] * lengths_m2;
                     entry += lengths_m2 * pair.retarded_per_m(k);
                 }
@@ -226,6 +244,17 @@ impl Structure {
             }
         }
         matrix
+    }
+
+    /// Number of cells.
+    pub fn cell_count(&self) -> usize {
+        self.into_cells.len()
+    }
+
+    /// Number of branches that lie between cells.
+    pub fn plate_branches(&self) -> usize {
+        let [columns, rows] = self.cells();
+        (columns - 1) * rows + columns * (rows - 1)
     }
 
     /// What gives charge and current density at a point inside the plate, metres; on its very edge they are
@@ -250,11 +279,28 @@ impl Structure {
     }
 }
 
-fn between_branches(a: &Branch, b: &Branch) -> Option<(Pair, f64)> {
-    let lengths_m2 = dot(a.along_m, b.along_m);
-    let largest_m2 = dot(a.along_m, a.along_m).max(dot(b.along_m, b.along_m));
-    let parallel = lengths_m2.abs() > 1e-12 * largest_m2;
-    parallel.then(|| (Pair::new(&a.pieces, &b.pieces), lengths_m2))
+/// Between each and those of the others from the same place on.
+fn between_nodes(nodes: &[Node], others: &[Node]) -> Vec<Pair> {
+    let from = |(first, a): (usize, &Node)| {
+        let others = others[first..].iter();
+        others.map(|b| Pair::new(a, b)).collect::<Vec<_>>()
+    };
+    nodes.iter().enumerate().flat_map(from).collect()
+}
+
+/// The same, with the scalar product of the lengths; none between perpendicular ones.
+fn between_branches(branches: &[Branch], others: &[Branch]) -> Vec<Option<(Pair, f64)>> {
+    let between = |a: &Branch, b: &Branch| {
+        let lengths_m2 = dot(a.along_m, b.along_m);
+        let largest_m2 = dot(a.along_m, a.along_m).max(dot(b.along_m, b.along_m));
+        let parallel = lengths_m2.abs() > 1e-12 * largest_m2;
+        parallel.then(|| (Pair::new(&a.pieces, &b.pieces), lengths_m2))
+    };
+    let from = |(first, a): (usize, &Branch)| {
+        let others = others[first..].iter();
+        others.map(|b| between(a, b)).collect::<Vec<_>>()
+    };
+    branches.iter().enumerate().flat_map(from).collect()
 }
 
 /// The factored equations of one frequency.
@@ -331,8 +377,9 @@ mod tests {
                 points_m: vec![[0.0, 0.0, -half_m], [0.0, 0.0, half_m]],
                 radius_m,
                 attached: false,
+                grounded: false,
             };
-            let structure = Structure::of(Mesh::of_wires(&[wire], half_m / 50.5));
+            let structure = Structure::of(Mesh::of_wires(&[wire], half_m / 50.5), None);
             let gap = structure.gap_v(0, half_m);
             let currents = structure.at(frequency_hz).driven(vec![gap]);
             1.0 / currents[0].wire_current_a(0, half_m)

@@ -14,19 +14,25 @@ use std::f64::consts::TAU;
 /// 1 / sqrt(x (L - x) y (W - y)), a current along x as sqrt(x (L - x)) / sqrt(y (W - y)).
 #[derive(Debug, Clone)]
 pub struct Probe {
-    /// Growth of the charge density with time, per square metre.
+    /// Charge density by the charges of cells, per square metre.
+    pub charge: Vec<(usize, f64)>,
+    /// The same by the branches: growth of the charge density with time.
     growth: Vec<(usize, f64)>,
-    /// Current density along x and y, per metre.
-    current: [Vec<(usize, f64)>; 2],
+    /// Current density along x and y by the currents between cells, per metre.
+    pub current: [Vec<(usize, f64)>; 2],
 }
 
 impl Probe {
     pub(super) fn new(mesh: &Mesh, into_cells: &[Vec<(usize, f64)>], point_m: [f64; 2]) -> Self {
         let density = [0, 1].map(|axis| mesh.axes[axis].density_weights(point_m[axis]));
         let crossing = [0, 1].map(|axis| mesh.axes[axis].crossing_weights(point_m[axis]));
+        let charge: Vec<(usize, f64)> = products(&density[0], &density[1])
+            .into_iter()
+            .map(|(cell, weight)| (mesh.node(cell), weight))
+            .collect();
         let mut growth = Vec::new();
-        for (cell, weight) in products(&density[0], &density[1]) {
-            let into = into_cells[mesh.node(cell)].iter();
+        for &(cell, weight) in &charge {
+            let into = into_cells[cell].iter();
             growth.extend(into.map(|&(branch, share)| (branch, share * weight)));
         }
         let current = [0, 1].map(|axis| {
@@ -40,6 +46,7 @@ impl Probe {
                 .collect()
         });
         Self {
+            charge,
             growth: merged(growth),
             current,
         }
@@ -133,6 +140,14 @@ impl<'a> Currents<'a> {
         &self.branches_a
     }
 
+    /// The charges of the plate's cells, coulombs; those of cables are not counted.
+    pub fn cells_c(&self) -> Vec<Complex64> {
+        let into_cells = self.structure.into_cells.iter();
+        into_cells
+            .map(|into| self.sum(into) / Complex64::new(0.0, TAU * self.frequency_hz))
+            .collect()
+    }
+
     /// Charge density of both faces, coulombs per square metre. A wire's own charge is not counted.
     pub fn charge_c_per_m2(&self, probe: &Probe) -> Complex64 {
         self.sum(&probe.growth) / Complex64::new(0.0, TAU * self.frequency_hz)
@@ -170,7 +185,9 @@ impl<'a> Currents<'a> {
         if known[0].0 > 0.0 {
             known.insert(0, (0.0, Complex64::ZERO));
         }
-        known.push((chain.length_m, Complex64::ZERO));
+        if !chain.grounded {
+            known.push((chain.length_m, Complex64::ZERO));
+        }
         let places_m: Vec<f64> = known.iter().map(|(place_m, _)| *place_m).collect();
         let weights = polynomial(&places_m, distance_m).into_iter();
         weights.map(|(place, weight)| weight * known[place].1).sum()

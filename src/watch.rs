@@ -1,6 +1,6 @@
-//! How far a long study has come, for whoever waits for it.
+//! How far long work has come, for whoever waits for it. Any stage may tell.
 
-/// Told while a study goes on. Calls come from several threads.
+/// Told while work goes on. Calls come from several threads.
 pub trait Watch: Sync {
     /// The next stretch of work: so many of something, named in the plural.
     fn begin(&self, what: &'static str, count: usize);
