@@ -207,6 +207,7 @@ fn judge(net: RungNet, far_fields: &[Strongest], setup: &CheckSetup) -> NetResul
         march: net.settled.report,
         warnings: net.warnings,
         waveform: net.settled.waveform,
+        spread: None,
     }
 }
 

@@ -17,7 +17,8 @@ use definitions::Definitions;
 pub use varied::{NamedTolerance, VariedNet, VariedNets};
 
 /// Why plane and cables have no tolerances.
-const ONE_ANTENNA: &str = "plane and cables are the antenna, which is worked out once for all draws";
+const ONE_ANTENNA: &str =
+    "plane and cables are the antenna, which is worked out once for all draws";
 
 /// What a board file holds.
 #[derive(Debug, Clone, PartialEq)]
