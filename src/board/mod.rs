@@ -5,7 +5,7 @@
 
 mod read;
 
-pub use read::{Reading, UnusableNet, read_board};
+pub use read::{NamedTolerance, Reading, UnusableNet, VariedNet, VariedNets, read_board};
 
 use std::sync::Arc;
 

@@ -4,13 +4,13 @@ use std::path::{Path, PathBuf};
 
 use clap::Args;
 use rayon::prelude::*;
-use ringfield::board::{Board, CableRun, Reading, UnusableNet, read_board};
+use ringfield::board::{Board, CableRun, Reading, UnusableNet, VariedNets, read_board};
 use ringfield::limit::{Limit, LimitAt, default_limits, limits_at};
 use ringfield::radiation::{COMPARED_TO_HZ, Heights, UNKNOWN_CABLE_LENGTHS_M};
 use ringfield::show::{
     CheckReport, check_json, check_table, harmonics_csv, march_table, waveform_csv,
 };
-use ringfield::study::{CheckSetup, NetResult, Verdict, check, scan_band_hz};
+use ringfield::study::{CheckSetup, NetResult, Verdict, check_drawn, scan_band_hz};
 use ringfield::text::Severity;
 
 use super::options::{self, SiteChoice, USUAL_DISTANCES_M};
@@ -50,6 +50,10 @@ pub struct Options {
     #[arg(long, value_name = "DECIBELS", default_value = "5 dB", value_parser = options::decibels)]
     sigma: f64,
 
+    /// Draws of the tolerances of each net that has some: spread of the margin, and what carries it; 0 is none
+    #[arg(long, value_name = "NUMBER", default_value_t = 0, value_parser = options::draws)]
+    draws: usize,
+
     /// Write everything as JSON; `-` prints it in place of the table
     #[arg(long, value_name = "FILE")]
     json: Option<PathBuf>,
@@ -78,7 +82,8 @@ pub fn run(options: &Options) -> Result<Ending, Refusal> {
         [] => default_limits(),
         files => input::limits(files)?,
     };
-    let reading = read(&options.board)?;
+    let mut reading = read(&options.board)?;
+    let varied = reading.varied.take();
     // The whole board decides how far to scan, whichever nets are asked for.
     let scan_hz = reading
         .board
@@ -89,7 +94,7 @@ pub fn run(options: &Options) -> Result<Ending, Refusal> {
     check_places(options)?;
 
     let setup = setup(options, scan_hz.unwrap_or_default(), limits);
-    let report = report(setup, &board, unusable)?;
+    let report = report(setup, &board, (varied.as_ref(), options.draws), unusable)?;
     let several = report.nets.len() + report.unusable.len() > 1;
     output::write(outputs(options, &report, several))?;
     output::print(&answer(options, &report))?;
@@ -181,6 +186,7 @@ fn check_places(options: &Options) -> Result<(), Refusal> {
 fn report(
     setup: CheckSetup,
     board: &Board,
+    (varied, draws): (Option<&VariedNets>, usize),
     unusable: Vec<UnusableNet>,
 ) -> Result<CheckReport, Refusal> {
     let distances = setup.distances_m.iter();
@@ -193,8 +199,9 @@ fn report(
         remarks: cable_remarks(board)
             .into_iter()
             .chain(beyond_comparison(board, &setup))
+            .chain(tolerance_remark(varied, draws))
             .collect(),
-        nets: check(board, &setup, &Progress::new()),
+        nets: check_drawn(board, varied, draws, &setup, &Progress::new()),
         distances_m: setup.distances_m,
         limits,
         unusable,
@@ -240,6 +247,19 @@ fn beyond_comparison(board: &Board, setup: &CheckSetup) -> Option<String> {
          other solution."
             .into()
     })
+}
+
+/// What has to be said of tolerances that are not drawn, or draws of none.
+fn tolerance_remark(varied: Option<&VariedNets>, draws: usize) -> Option<String> {
+    match (varied, draws) {
+        (Some(_), 0) => Some(
+            "The file states tolerances, and every figure is nominal: `--draws 256` tells what they make of the \
+             margins."
+                .into(),
+        ),
+        (None, 1..) => Some("The file states no tolerances, so there was nothing to draw.".into()),
+        _ => None,
+    }
 }
 
 /// What has to be said about the cables.

@@ -2,6 +2,7 @@
 
 use clap::ValueEnum;
 use ringfield::radiation::Site;
+use ringfield::study::{FEWEST_DRAWS, MOST_DRAWS};
 use ringfield::text::{Dimension, parse_quantity};
 
 /// Without `--distance`.
@@ -51,6 +52,16 @@ pub fn decibels(text: &str) -> Result<f64, String> {
     let number = text.trim().strip_suffix("dB").unwrap_or(text).trim();
     let decibels = number.parse().map_err(|_| expected.to_string())?;
     in_range(decibels, 0.0..=40.0, expected)
+}
+
+/// How many draws of the tolerances.
+pub fn draws(text: &str) -> Result<usize, String> {
+    match text.trim().parse() {
+        Ok(draws) if draws == 0 || (FEWEST_DRAWS..=MOST_DRAWS).contains(&draws) => Ok(draws),
+        _ => Err(format!(
+            "a number of draws from {FEWEST_DRAWS} to {MOST_DRAWS} was expected, or 0"
+        )),
+    }
 }
 
 fn quantity(text: &str, dimension: Dimension) -> Result<f64, String> {

@@ -4,6 +4,7 @@ use std::collections::BTreeMap;
 
 use serde::Serialize;
 
+use super::spread::{SpreadEntry, spread_entry};
 use super::{CheckReport, NOTICE, words};
 use crate::study::{ClampSignal, Harmonic, NetResult, ReceiverSignal, Signal};
 
@@ -73,6 +74,8 @@ struct NetEntry<'a> {
     harmonics: Vec<HarmonicEntry<'a>>,
     signal: SignalEntry<'a>,
     warnings: &'a [String],
+    #[serde(skip_serializing_if = "Option::is_none")]
+    spread: Option<SpreadEntry<'a>>,
 }
 
 #[derive(Serialize)]
@@ -161,6 +164,7 @@ fn net_entry(net: &NetResult) -> NetEntry<'_> {
             .collect(),
         signal: signal_entry(&net.signal),
         warnings: &net.warnings,
+        spread: net.spread.as_ref().map(spread_entry),
     }
 }
 

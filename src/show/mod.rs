@@ -9,6 +9,7 @@ mod limit_listing;
 mod plot;
 #[cfg(test)]
 mod samples;
+mod spread;
 mod table;
 mod words;
 

@@ -116,6 +116,7 @@ pub(super) fn net(name: &str, clock_hz: f64, harmonics: usize) -> NetResult {
             receivers_v: vec![ringing(clock_hz, 0.9e-9, 1.3)],
         },
         warnings: Vec::new(),
+        spread: None,
     }
 }
 

@@ -6,6 +6,7 @@ use anstyle::{AnsiColor, Style};
 use comfy_table::{CellAlignment, Table, presets};
 
 use super::findings::findings;
+use super::spread::push_spreads;
 use super::{CheckReport, LABORATORY, NOTICE, words};
 use crate::limit::LimitAt;
 use crate::study::{NetResult, Verdict};
@@ -44,6 +45,7 @@ pub fn check_table(report: &CheckReport) -> String {
         }
         text.push('\n');
     }
+    push_spreads(&mut text, &nets);
     push_findings(&mut text, &nets);
     push_unusable(&mut text, report);
     push_warnings(&mut text, report);

@@ -244,6 +244,7 @@ fn judge(net: RungNet, readings: &[Vec<Reading>], setup: &CheckSetup) -> NetResu
         march: net.settled.report,
         warnings: net.warnings,
         waveform: net.settled.waveform,
+        spread: None,
     }
 }
 

@@ -3,12 +3,16 @@
 mod band;
 mod check;
 mod signal;
+mod tolerance;
 mod verdict;
 
 pub use crate::watch::{Unwatched, Watch};
 pub use band::scan_band_hz;
 pub use check::{CheckSetup, RungNet, board_antenna, check, judge_all, ring, ring_all};
 pub use signal::{ClampSignal, ReceiverSignal, Signal};
+pub use tolerance::{
+    Carried, CarriedBy, FEWEST_DRAWS, MOST_DRAWS, MarginSpread, Spread, check_drawn, spread_all,
+};
 pub use verdict::{
     INSTRUMENT_SIGMA_DB, MODEL_SIGMA_DB, Verdict, chance_of_failing, total_sigma_db,
 };
@@ -28,7 +32,7 @@ pub struct NetResult {
     pub clock_hz: f64,
     /// What the worst margin means.
     pub verdict: Verdict,
-    /// Chance of failing, 0 to 1; `None` where nothing could be judged.
+    /// Chance of failing, 0 to 1, over the draws where tolerances were drawn; `None` where nothing could be judged.
     pub chance_of_failing: Option<f64>,
     /// The smallest margin over limits, distances and harmonics; `None` where no limit covers a harmonic or nothing radiates.
     pub worst: Option<Worst>,
@@ -42,6 +46,8 @@ pub struct NetResult {
     pub waveform: SettledWaveform,
     /// What the user should know, in plain sentences.
     pub warnings: Vec<String>,
+    /// What its tolerances make of the margin; `None` where none were drawn.
+    pub spread: Option<Spread>,
 }
 
 /// The reading with the smallest margin.

@@ -1,10 +1,11 @@
 //! Maps read field by field, with every mistake reported at its place.
 
-use std::cell::RefCell;
+use std::cell::{Cell, RefCell};
 use std::collections::HashSet;
 
 use super::diagnostic::{Diagnostic, Severity, near_miss};
-use super::quantity::{Dimension, QuantityError, parse_quantity, shortened};
+use super::draw::{Draw, Noted};
+use super::quantity::{Dimension, QuantityError, parse_stated, shortened};
 use super::yaml::{Document, Key, Located, Node, Value};
 
 /// What a reader found wrong in a document so far.
@@ -13,8 +14,13 @@ use super::yaml::{Document, Key, Located, Node, Value};
 /// ([`Report::attempt`]): so one reading finds all mistakes.
 #[derive(Debug)]
 pub struct Report<'d> {
-    document: &'d Document<'d>,
-    diagnostics: RefCell<Vec<Diagnostic>>,
+    /// `None` where the same was read and reported before.
+    pub(super) document: Option<&'d Document<'d>>,
+    pub(super) diagnostics: RefCell<Vec<Diagnostic>>,
+    /// Why no quantity may have a tolerance just now; `None` where it may.
+    pub(super) tolerances_refused: Cell<Option<&'static str>>,
+    pub(super) noted: RefCell<Vec<Noted>>,
+    pub(super) draw: Draw,
 }
 
 /// What a quantity may be.
@@ -32,7 +38,7 @@ pub enum Range {
 
 impl Range {
     /// What a number outside is not, if it lies outside.
-    fn complaint(self, number: f64) -> Option<&'static str> {
+    pub(super) fn complaint(self, number: f64) -> Option<&'static str> {
         let (inside, complaint) = match self {
             Self::Any => (true, ""),
             Self::Positive => (number > 0.0, "must be above zero"),
@@ -47,8 +53,28 @@ impl<'d> Report<'d> {
     /// An empty report on `document`.
     pub fn new(document: &'d Document<'d>) -> Self {
         Self {
-            document,
+            document: Some(document),
             diagnostics: RefCell::default(),
+            tolerances_refused: Cell::new(Some(
+                "only nets and what they are made of have tolerances",
+            )),
+            noted: RefCell::default(),
+            draw: Draw::default(),
+        }
+    }
+
+    fn diagnostic(
+        &self,
+        severity: Severity,
+        what: &impl Located,
+        message: impl Into<String>,
+    ) -> Diagnostic {
+        match self.document {
+            Some(document) => document.diagnostic(severity, what, message),
+            None => Diagnostic {
+                severity,
+                ..Diagnostic::error(message)
+            },
         }
     }
 
@@ -72,13 +98,13 @@ impl<'d> Report<'d> {
         message: impl Into<String>,
         detail: impl FnOnce(Diagnostic) -> Diagnostic,
     ) {
-        let diagnostic = self.document.diagnostic(Severity::Error, what, message);
+        let diagnostic = self.diagnostic(Severity::Error, what, message);
         self.diagnostics.borrow_mut().push(detail(diagnostic));
     }
 
     /// Reports a warning at `what`.
     pub fn warning(&self, what: &impl Located, message: impl Into<String>) {
-        let diagnostic = self.document.diagnostic(Severity::Warning, what, message);
+        let diagnostic = self.diagnostic(Severity::Warning, what, message);
         self.diagnostics.borrow_mut().push(diagnostic);
     }
 
@@ -192,16 +218,14 @@ impl<'d> Report<'d> {
             Value::Float(number) if number.is_infinite() => ".inf".into(),
             _ => node.scalar()?,
         };
-        match parse_quantity(&written, dimension) {
-            Ok(number) => {
-                let Some(complaint) = range.complaint(number) else {
-                    return Some(number);
-                };
-                self.error(
-                    node,
-                    format!("{name} {complaint}: `{}`", shortened(&written)),
-                    |d| d,
-                );
+        match parse_stated(&written, dimension) {
+            Ok(stated) => {
+                if let Some(complaint) = range.complaint(stated.nominal) {
+                    let message = format!("{name} {complaint}: `{}`", shortened(&written));
+                    self.error(node, message, |d| d);
+                } else {
+                    return self.drawn(node, name, &written, stated, range);
+                }
             }
             Err(QuantityError {
                 text,

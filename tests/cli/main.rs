@@ -2,6 +2,7 @@
 
 mod answers;
 mod documents;
+mod draws;
 mod files;
 mod readings;
 mod refusals;

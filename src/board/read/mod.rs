@@ -1,17 +1,24 @@
 //! Board files.
 
 mod antenna;
+mod corners;
+mod definitions;
 mod net;
 mod parts;
 mod path;
+mod varied;
 
 use std::collections::{BTreeMap, HashMap, HashSet};
-use std::sync::Arc;
 
 use super::Board;
-use crate::text::{
-    Diagnostic, Fields, Key, Node, Report, Value, alternatives, near_miss, parse_yaml,
-};
+use crate::text::{Diagnostic, Fields, Key, Node, Noted, Report, Value, alternatives, parse_yaml};
+use definitions::Definitions;
+
+pub use varied::{NamedTolerance, VariedNet, VariedNets};
+
+/// Why plane and cables have no tolerances.
+const ONE_ANTENNA: &str =
+    "plane and cables are the antenna, which is worked out once for all draws";
 
 /// What a board file holds.
 #[derive(Debug, Clone, PartialEq)]
@@ -22,6 +29,8 @@ pub struct Reading {
     pub diagnostics: Vec<Diagnostic>,
     /// The nets that are left out.
     pub unusable: Vec<UnusableNet>,
+    /// The usable nets that have tolerances; `None` where there are none.
+    pub varied: Option<VariedNets>,
 }
 
 /// A net that is left out.
@@ -45,16 +54,18 @@ pub fn read_board(text: &str, file_name: &str) -> Reading {
                 board: None,
                 diagnostics: vec![*error],
                 unusable: Vec::new(),
+                varied: None,
             };
         }
     };
     let report = Report::new(&document);
     let mut unusable = Vec::new();
-    let board = board(&report, &document.root, file_name, &mut unusable);
+    let (board, varied) = board(&report, &document.root, file_name, &mut unusable).unzip();
     Reading {
         board,
         diagnostics: report.into_diagnostics(),
         unusable,
+        varied: varied.filter(|varied: &VariedNets| !varied.is_empty()),
     }
 }
 
@@ -63,7 +74,7 @@ fn board(
     root: &Node,
     file_name: &str,
     unusable: &mut Vec<UnusableNet>,
-) -> Option<Board> {
+) -> Option<(Board, VariedNets)> {
     const FIELDS: [&str; 7] = [
         "title",
         "stackup",
@@ -80,28 +91,46 @@ fn board(
     }
     let fields = report.fields(root, "the board", &FIELDS)?;
     let title = fields.name("title").unwrap_or_else(|| file_name.to_owned());
-    let plane = antenna::plane(&fields);
-    let cables = antenna::cables(&fields, plane);
+    let (plane, cables) = report.refusing_tolerances(ONE_ANTENNA, || {
+        let plane = antenna::plane(&fields);
+        (plane, antenna::cables(&fields, plane))
+    });
     let stackup = entries(&fields, "stackup");
     let drivers = entries(&fields, "drivers");
     let receivers = entries(&fields, "receivers");
     let net_nodes = net_nodes(&fields);
     let is_sound = !report.has_errors();
 
+    let mut varied = VariedNets {
+        plane,
+        layers: Definitions::read(report, stackup),
+        drivers: Definitions::read(report, drivers),
+        receivers: Definitions::read(report, receivers),
+        by_name: BTreeMap::new(),
+    };
     let reader = net::NetReader {
         report,
         plane,
-        layers: Definitions::read(report, "layer", stackup, parts::layer),
-        drivers: Definitions::read(report, "driver", drivers, parts::driver),
-        receivers: Definitions::read(report, "receiver", receivers, parts::receiver),
+        layers: &varied.layers,
+        drivers: &varied.drivers,
+        receivers: &varied.receivers,
     };
-    let nets = nets(&reader, net_nodes?, unusable);
-    (is_sound && !nets.is_empty()).then_some(Board {
-        title,
-        plane,
-        cables,
-        nets,
-    })
+    let read = nets(&reader, net_nodes?, unusable);
+    for net in &read {
+        if !net.tolerances.is_empty() {
+            varied.add(&net.net.name, net.node, net.tolerances.clone());
+        }
+    }
+    let nets: Vec<_> = read.into_iter().map(|read| read.net).collect();
+    (is_sound && !nets.is_empty()).then_some((
+        Board {
+            title,
+            plane,
+            cables,
+            nets,
+        },
+        varied,
+    ))
 }
 
 /// The entries of a map of definitions, none where the file leaves it out or empty; `None` where it cannot be read.
@@ -136,11 +165,19 @@ fn net_nodes<'r>(fields: &Fields<'r>) -> Option<&'r [Node]> {
     Some(nodes)
 }
 
-fn nets(
+/// A net as it was read.
+struct ReadNet<'r> {
+    net: super::Net,
+    node: &'r Node,
+    /// The tolerances in it and in what it uses.
+    tolerances: Vec<Noted>,
+}
+
+fn nets<'r>(
     reader: &net::NetReader,
-    nodes: &[Node],
+    nodes: &'r [Node],
     unusable: &mut Vec<UnusableNet>,
-) -> Vec<super::Net> {
+) -> Vec<ReadNet<'r>> {
     let mut times_used: HashMap<String, usize> = HashMap::new();
     for name in nodes.iter().filter_map(name_written) {
         *times_used.entry(name).or_default() += 1;
@@ -149,7 +186,10 @@ fn nets(
     let mut seen = HashSet::new();
     for (index, node) in nodes.iter().enumerate() {
         let written = name_written(node);
-        let mut net = reader.net(node);
+        let (mut net, tolerances) = reader.report.with_noted(|| {
+            let read = || reader.net(node);
+            reader.report.allowing_tolerances(read)
+        });
         if let Some(name) = written.as_ref().filter(|name| times_used[*name] > 1) {
             let reason = format!("more than one net is called `{name}`");
             if !seen.insert(name.clone()) {
@@ -160,7 +200,11 @@ fn nets(
             net = Err(reason);
         }
         match net {
-            Ok(net) => nets.push(net),
+            Ok(net) => nets.push(ReadNet {
+                net,
+                node,
+                tolerances,
+            }),
             Err(reason) => {
                 let name = written.unwrap_or_else(|| format!("net {}", index + 1));
                 unusable.push(UnusableNet { name, reason });
@@ -179,77 +223,6 @@ fn name_written(node: &Node) -> Option<String> {
         .iter()
         .find(|(key, _)| key.text == "name")
         .and_then(|(_, name)| name.scalar())
-}
-
-/// Parts by name; `None` for those that cannot be read.
-struct Definitions<T> {
-    kind: &'static str,
-    /// Whether the map of them can be read; if not, any name may stand in it.
-    is_readable: bool,
-    by_name: BTreeMap<String, Option<Arc<T>>>,
-}
-
-/// A definition that cannot be had.
-enum Unavailable {
-    /// Nothing of that name is defined; reported.
-    Undefined,
-    /// It has mistakes of its own, reported there.
-    Unreadable(String),
-}
-
-impl<T> Definitions<T> {
-    fn read(
-        report: &Report,
-        kind: &'static str,
-        entries: Option<&[(Key, Node)]>,
-        part: fn(&Report, &str, &Node) -> Option<T>,
-    ) -> Self {
-        let by_name = entries
-            .unwrap_or_default()
-            .iter()
-            .map(|(key, node)| {
-                let part = report
-                    .attempt(|| part(report, &key.text, node))
-                    .ok()
-                    .map(Arc::new);
-                (key.text.clone(), part)
-            })
-            .collect();
-        Self {
-            kind,
-            is_readable: entries.is_some(),
-            by_name,
-        }
-    }
-
-    /// Finds the part named at `node`.
-    fn find(&self, report: &Report, node: &Node, name: &str) -> Result<Arc<T>, Unavailable> {
-        let kind = self.kind;
-        match self.by_name.get(name) {
-            Some(Some(part)) => Ok(Arc::clone(part)),
-            None if self.is_readable => {
-                let known: Vec<&str> = self.by_name.keys().map(String::as_str).collect();
-                let expected = if known.is_empty() {
-                    format!("a {kind} that this file defines; it defines none")
-                } else {
-                    format!(
-                        "a {kind} that this file defines: {}",
-                        alternatives(&known, "or")
-                    )
-                };
-                report.error(
-                    node,
-                    format!("no {kind} is called {}", node.describe()),
-                    |d| d.expected(expected).near_miss(near_miss(name, known)),
-                );
-                Err(Unavailable::Undefined)
-            }
-            _ => {
-                let reason = format!("uses {kind} `{name}`, which cannot be read");
-                Err(Unavailable::Unreadable(reason))
-            }
-        }
-    }
 }
 
 #[cfg(test)]

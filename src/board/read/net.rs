@@ -5,8 +5,8 @@ use std::sync::Arc;
 
 use super::super::{Along, Driver, Layer, Net, Plane, ReceiverPart};
 use super::antenna::in_mm;
+use super::definitions::{Definitions, Part, Unavailable};
 use super::path::PathReader;
-use super::{Definitions, Unavailable};
 use crate::text::{Dimension, Fields, Node, Range, Report};
 
 const DEFAULT_DUTY: f64 = 0.5;
@@ -17,9 +17,9 @@ const ROUNDING: f64 = 1e-9;
 pub(super) struct NetReader<'r> {
     pub(super) report: &'r Report<'r>,
     pub(super) plane: Option<Plane>,
-    pub(super) layers: Definitions<Layer>,
-    pub(super) drivers: Definitions<Driver>,
-    pub(super) receivers: Definitions<ReceiverPart>,
+    pub(super) layers: &'r Definitions<Layer>,
+    pub(super) drivers: &'r Definitions<Driver>,
+    pub(super) receivers: &'r Definitions<ReceiverPart>,
 }
 
 impl NetReader<'_> {
@@ -53,8 +53,12 @@ impl NetReader<'_> {
         }
         let driver = fields
             .require_name("driver")
-            .and_then(|name| self.find(&self.drivers, fields.get("driver")?, &name, unreadable));
-        let clock_hz = fields.require_quantity("clock", Dimension::Frequency, Range::Positive);
+            .and_then(|name| self.find(self.drivers, fields.get("driver")?, &name, unreadable));
+        // Each draw would have lines, and an antenna, of its own.
+        let clock_hz = self.report.refusing_tolerances(
+            "the lines of a net stay where they are in all draws",
+            || fields.require_quantity("clock", Dimension::Frequency, Range::Positive),
+        );
         let duty = self.duty(&fields);
         if let (Some(driver), Some(clock_hz), Some(duty)) = (&driver, clock_hz, duty) {
             edges_fit(&fields, driver, clock_hz, duty);
@@ -76,7 +80,7 @@ impl NetReader<'_> {
     }
 
     /// Finds a part, and keeps it in mind where the part itself cannot be read.
-    pub(super) fn find<T>(
+    pub(super) fn find<T: Part>(
         &self,
         definitions: &Definitions<T>,
         node: &Node,

@@ -3,13 +3,39 @@
 use super::super::{
     Clamp, Driver, EdgeShape, HighClamp, Layer, ReceiverPart, Structure, Thresholds,
 };
+use super::corners::between_corners;
+use super::definitions::Part;
 use crate::text::{Dimension, Fields, Node, Range, Report, Value};
 
 const DEFAULT_COPPER_M: f64 = 35e-6;
 const DEFAULT_LOSS_TANGENT: f64 = 0.02;
 
+impl Part for Layer {
+    const KIND: &'static str = "layer";
+
+    fn read(report: &Report, name: &str, node: &Node) -> Option<Self> {
+        layer(report, name, node)
+    }
+}
+
+impl Part for Driver {
+    const KIND: &'static str = "driver";
+
+    fn read(report: &Report, name: &str, node: &Node) -> Option<Self> {
+        driver(report, name, node)
+    }
+}
+
+impl Part for ReceiverPart {
+    const KIND: &'static str = "receiver";
+
+    fn read(report: &Report, name: &str, node: &Node) -> Option<Self> {
+        receiver(report, name, node)
+    }
+}
+
 /// A layer of the stackup.
-pub(super) fn layer(report: &Report, name: &str, node: &Node) -> Option<Layer> {
+fn layer(report: &Report, name: &str, node: &Node) -> Option<Layer> {
     use Dimension::{Length, Number};
     const MATERIAL: [&str; 4] = ["permittivity", "loss_tangent", "copper", "roughness"];
     let called = format!("layer `{name}`");
@@ -56,8 +82,8 @@ pub(super) fn layer(report: &Report, name: &str, node: &Node) -> Option<Layer> {
 }
 
 /// A driver.
-pub(super) fn driver(report: &Report, name: &str, node: &Node) -> Option<Driver> {
-    const FIELDS: [&str; 8] = [
+fn driver(report: &Report, name: &str, node: &Node) -> Option<Driver> {
+    const FIELDS: [&str; 9] = [
         "swing",
         "low",
         "high",
@@ -66,6 +92,7 @@ pub(super) fn driver(report: &Report, name: &str, node: &Node) -> Option<Driver>
         "fall",
         "thresholds",
         "edge",
+        "corners",
     ];
     const THRESHOLDS: [(&str, Thresholds); 3] = [
         ("10-90", Thresholds::TenNinety),
@@ -85,7 +112,7 @@ pub(super) fn driver(report: &Report, name: &str, node: &Node) -> Option<Driver>
     let edge = fields.choice("edge", &EDGES).unwrap_or_default();
     let (low_v, high_v) = levels?;
     let (low_resistance_ohm, high_resistance_ohm) = resistances?;
-    Some(Driver {
+    let stated = Driver {
         name: name.to_owned(),
         low_v,
         high_v,
@@ -95,11 +122,12 @@ pub(super) fn driver(report: &Report, name: &str, node: &Node) -> Option<Driver>
         fall_s: fall_s?,
         thresholds,
         edge,
-    })
+    };
+    between_corners(&fields, stated)
 }
 
 /// The low and the high level of a driver.
-fn levels(fields: &Fields) -> Option<(f64, f64)> {
+pub(super) fn levels(fields: &Fields) -> Option<(f64, f64)> {
     use Dimension::Voltage;
     const EXPECTED: &str = "`swing: 3.3 V`, or `low` and `high`";
     let has_levels = !fields.lacks(&["low", "high"]);
@@ -133,7 +161,7 @@ fn rising(fields: &Fields, low_v: f64, high_v: f64) -> Option<(f64, f64)> {
 }
 
 /// The resistance of a driver in its low and its high state.
-fn driver_resistances(fields: &Fields) -> Option<(f64, f64)> {
+pub(super) fn driver_resistances(fields: &Fields) -> Option<(f64, f64)> {
     use Dimension::Resistance;
     let expected = "a resistance such as `3 ohm`, or `{high: 20 ohm, low: 14 ohm}`";
     let node = fields.require("resistance", expected)?;
@@ -150,7 +178,7 @@ fn driver_resistances(fields: &Fields) -> Option<(f64, f64)> {
 }
 
 /// A receiver.
-pub(super) fn receiver(report: &Report, name: &str, node: &Node) -> Option<ReceiverPart> {
+fn receiver(report: &Report, name: &str, node: &Node) -> Option<ReceiverPart> {
     use Dimension::{Capacitance, Current, Inductance, Resistance, Voltage};
     const FIELDS: [&str; 7] = [
         "capacitance",

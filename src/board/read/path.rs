@@ -121,7 +121,7 @@ impl<'r> PathReader<'r> {
         let layer = fields.require_name("layer").and_then(|name| {
             let node = fields.get("layer")?;
             self.reader
-                .find(&self.reader.layers, node, &name, self.unreadable)
+                .find(self.reader.layers, node, &name, self.unreadable)
         });
         let width_m = fields.require_quantity("width", Dimension::Length, Range::Positive);
         let (length_m, points_m) = run(&fields, self.reader.plane);
@@ -227,7 +227,7 @@ impl<'r> PathReader<'r> {
         }
         let part = self
             .reader
-            .find(&self.reader.receivers, part_node, &part, self.unreadable)?;
+            .find(self.reader.receivers, part_node, &part, self.unreadable)?;
         self.given_names
             .borrow_mut()
             .push(name.map(|(_, name)| name));
@@ -248,7 +248,13 @@ fn require_any(fields: &Fields, any_of: &[&str]) {
 
 /// The length and the points of a trace or line; points rule the length.
 fn run(fields: &Fields, plane: Option<Plane>) -> (Option<f64>, Vec<[f64; 2]>) {
-    let length_m = fields.quantity("length", Dimension::Length, Range::Positive);
+    let length = || fields.quantity("length", Dimension::Length, Range::Positive);
+    let length_m = if fields.has("points") {
+        let refusing = "the points rule the length";
+        fields.report.refusing_tolerances(refusing, length)
+    } else {
+        length()
+    };
     let Some(points_m) = points(fields, plane) else {
         return (length_m, Vec::new());
     };

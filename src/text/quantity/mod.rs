@@ -1,10 +1,13 @@
 //! Quantities: a number with its unit, read into SI units.
 
+mod tolerance;
 mod units;
 
 use super::diagnostic::near_miss;
 use units::Scale::{self, Decibels, Fraction, Ten};
 use units::{HABITS, UNITS};
+
+pub use tolerance::{Distribution, Stated, Tolerance, parse_stated};
 
 /// What a quantity measures.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -117,6 +120,9 @@ pub fn parse_quantity(text: &str, dimension: Dimension) -> Result<f64, QuantityE
         }
         return Err(error(format!("is not {}", dimension.name()), None));
     };
+    if unit.contains(tolerance::MARK) || unit.contains('\u{b1}') {
+        return Err(error("cannot have a tolerance here".into(), None));
+    }
     if unit.starts_with(',') {
         let pointed = text.replacen(',', ".", 1);
         return Err(error("has a decimal comma".into(), Some(pointed)));

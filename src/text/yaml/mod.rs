@@ -69,6 +69,24 @@ impl Node {
         }
     }
 
+    /// The keys and items, counted from 1, that lead from here to the part with this number.
+    pub(super) fn way_to(&self, id: usize) -> Option<Vec<String>> {
+        if self.id == id {
+            return Some(Vec::new());
+        }
+        let (word, mut way) = match &self.value {
+            Value::List(items) => items.iter().enumerate().find_map(|(index, item)| {
+                Some((format!("item {}", index + 1), item.way_to(id)?))
+            })?,
+            Value::Map(entries) => entries
+                .iter()
+                .find_map(|(key, node)| Some((key.text.clone(), node.way_to(id)?)))?,
+            _ => return None,
+        };
+        way.insert(0, word);
+        Some(way)
+    }
+
     /// What stands here, for a message: `` `4 mil` ``, `a list`.
     pub fn describe(&self) -> String {
         match (&self.value, self.scalar()) {
