@@ -7,6 +7,7 @@ mod options;
 mod output;
 mod pictures;
 mod progress;
+mod question;
 
 use std::process::ExitCode;
 
