@@ -1,6 +1,7 @@
 //! The command line. The only place that opens files, prints, and ends the program.
 
 pub mod check;
+pub mod compare;
 mod input;
 pub mod limits;
 mod options;
@@ -30,6 +31,8 @@ pub struct Arguments {
 pub enum Command {
     /// Tell which nets of a board will likely fail
     Check(check::Options),
+    /// Hold a net against itself under other terminations, edges or layouts
+    Compare(compare::Options),
     /// Tell what limit lines say
     Limits(limits::Options),
 }

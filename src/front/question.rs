@@ -48,6 +48,8 @@ pub struct Question {
 pub struct Asked {
     /// The board with only the nets asked for.
     pub board: Board,
+    /// The board with all of its usable nets.
+    pub whole: Board,
     /// The unusable ones among the nets asked for.
     pub unusable: Vec<UnusableNet>,
     /// What to measure and against what.
@@ -70,9 +72,11 @@ impl Question {
             .as_ref()
             .map(|board| scan_band_hz(board, &limits));
         let broken_elsewhere = reading.unusable.is_empty() && has_errors(&reading);
+        let whole = reading.board.clone();
         let (board, unusable) = selected(reading, &self.board, &self.net)?;
         let setup = self.setup(scan_hz.unwrap_or_default(), limits);
         Ok(Asked {
+            whole: whole.unwrap_or_else(|| board.clone()),
             board,
             unusable,
             setup,

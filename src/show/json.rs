@@ -9,6 +9,11 @@ use crate::study::{ClampSignal, Harmonic, NetResult, ReceiverSignal, Signal};
 
 /// The whole report as one JSON object; a number that is not finite is `null`.
 pub fn check_json(report: &CheckReport) -> String {
+    document(report, report.nets.iter().map(net_entry).collect())
+}
+
+/// What a report says of the whole board, around what it says of each net.
+pub(super) fn document<Entry: Serialize>(report: &CheckReport, nets: Vec<Entry>) -> String {
     let document = Document {
         notice: NOTICE,
         board: &report.board,
@@ -23,7 +28,7 @@ pub fn check_json(report: &CheckReport) -> String {
             })
             .collect(),
         remarks: &report.remarks,
-        nets: report.nets.iter().map(net_entry).collect(),
+        nets,
         unusable: report
             .unusable
             .iter()
@@ -40,13 +45,13 @@ pub fn check_json(report: &CheckReport) -> String {
 }
 
 #[derive(Serialize)]
-struct Document<'a> {
+struct Document<'a, Entry> {
     notice: &'static str,
     board: &'a str,
     site: &'static str,
     limits: Vec<LimitEntry<'a>>,
     remarks: &'a [String],
-    nets: Vec<NetEntry<'a>>,
+    nets: Vec<Entry>,
     unusable: Vec<UnusableEntry<'a>>,
 }
 
@@ -64,7 +69,7 @@ struct UnusableEntry<'a> {
 }
 
 #[derive(Serialize)]
-struct NetEntry<'a> {
+pub(super) struct NetEntry<'a> {
     name: &'a str,
     clock_hz: f64,
     verdict: &'static str,
@@ -138,7 +143,7 @@ struct ClampEntry {
     high: Option<f64>,
 }
 
-fn net_entry(net: &NetResult) -> NetEntry<'_> {
+pub(super) fn net_entry(net: &NetResult) -> NetEntry<'_> {
     NetEntry {
         name: &net.name,
         clock_hz: net.clock_hz,

@@ -1,8 +1,11 @@
 //! Studies: what a user asks of the pipeline, answered for one net or many.
 
 mod band;
+pub mod change;
 mod check;
+pub mod compare;
 mod signal;
+mod values;
 mod verdict;
 mod watch;
 
