@@ -9,6 +9,7 @@ mod output;
 mod pictures;
 mod progress;
 mod question;
+pub mod remedy;
 
 use std::process::ExitCode;
 
@@ -33,6 +34,8 @@ pub enum Command {
     Check(check::Options),
     /// Hold a net against itself under other terminations, edges or layouts
     Compare(compare::Options),
+    /// Find what to solder in, for every net that does not likely pass
+    Remedy(remedy::Options),
     /// Tell what limit lines say
     Limits(limits::Options),
 }

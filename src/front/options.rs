@@ -47,7 +47,15 @@ pub fn frequency(text: &str) -> Result<f64, String> {
 
 /// A standard deviation in dB; the unit may be left out.
 pub fn decibels(text: &str) -> Result<f64, String> {
-    let expected = "a spread from 0 dB to 40 dB was expected";
+    decibels_from_0_to_40(text, "a spread from 0 dB to 40 dB was expected")
+}
+
+/// A margin in dB; the unit may be left out.
+pub fn margin(text: &str) -> Result<f64, String> {
+    decibels_from_0_to_40(text, "a margin from 0 dB to 40 dB was expected")
+}
+
+fn decibels_from_0_to_40(text: &str, expected: &str) -> Result<f64, String> {
     let number = text.trim().strip_suffix("dB").unwrap_or(text).trim();
     let decibels = number.parse().map_err(|_| expected.to_string())?;
     in_range(decibels, 0.0..=40.0, expected)

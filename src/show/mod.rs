@@ -8,6 +8,7 @@ mod findings;
 mod json;
 mod limit_listing;
 mod plot;
+mod remedy;
 #[cfg(test)]
 mod samples;
 mod table;
@@ -23,6 +24,7 @@ pub use plot::{
     Picture, spectrum_picture, sweep_picture, variants_spectrum_picture, variants_waveform_picture,
     waveform_picture,
 };
+pub use remedy::{RemedyReport, remedy_csv, remedy_json, remedy_table};
 pub use table::{check_table, march_table};
 pub use words::distance;
 

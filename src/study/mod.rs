@@ -4,6 +4,7 @@ mod band;
 pub mod change;
 mod check;
 pub mod compare;
+pub mod remedy;
 mod signal;
 mod values;
 mod verdict;

@@ -8,6 +8,9 @@ pub use csv::{comparison_csv, sweep_csv};
 pub use json::comparison_json;
 pub use table::comparison_table;
 
+pub(super) use json::{VariantEntry, variant_entry};
+pub(super) use table::{ASSUMED_THRESHOLDS, push_table};
+
 use super::CheckReport;
 use crate::study::compare::{Comparison, Variant};
 

@@ -349,7 +349,7 @@ fn set_height(path: &mut [PathItem], new_m: f64) -> bool {
 }
 
 fn find_layer(board: &Board, name: &str) -> Result<Arc<Layer>, String> {
-    let layers = layers(board);
+    let layers = layers(&board.nets);
     let found = layers.iter().find(|layer| layer.name == name);
     found.cloned().ok_or_else(|| {
         let known: Vec<&str> = layers.iter().map(|layer| layer.name.as_str()).collect();
@@ -360,8 +360,8 @@ fn find_layer(board: &Board, name: &str) -> Result<Arc<Layer>, String> {
     })
 }
 
-/// The layers that the board's nets run on, by name.
-pub(super) fn layers(board: &Board) -> Vec<Arc<Layer>> {
+/// The layers that some nets run on.
+pub(super) fn layers(nets: &[Net]) -> Vec<Arc<Layer>> {
     fn collect(path: &[PathItem], layers: &mut Vec<Arc<Layer>>) {
         for item in path {
             match item {
@@ -376,7 +376,7 @@ pub(super) fn layers(board: &Board) -> Vec<Arc<Layer>> {
         }
     }
     let mut layers = Vec::new();
-    for net in &board.nets {
+    for net in nets {
         collect(&net.path, &mut layers);
     }
     layers

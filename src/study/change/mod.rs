@@ -138,6 +138,26 @@ impl Try {
     pub fn on(&self, net: &Net, board: &Board) -> Result<Net, ApplyError> {
         apply::apply(self, net, board)
     }
+
+    /// The greatest height of a net's lines over a single plane: what `height` changes.
+    pub fn greatest_height_m(net: &Net) -> Option<f64> {
+        apply::greatest_height_m(&net.path)
+    }
+
+    /// The longest way from a net's driver to a far end: what `length` changes.
+    pub fn longest_way_m(net: &Net) -> f64 {
+        apply::longest_way_m(&net.path)
+    }
+
+    /// The moves to those layers of a board that a net does not run on.
+    pub fn other_layers(net: &Net, board: &Board) -> Vec<Self> {
+        let own = apply::layers(std::slice::from_ref(net));
+        apply::layers(&board.nets)
+            .iter()
+            .filter(|layer| !own.is_empty() && own.iter().all(|own| own.name != layer.name))
+            .map(|layer| Self::of(vec![Change::Layer(layer.name.clone())]))
+            .collect()
+    }
 }
 
 impl Change {

@@ -156,6 +156,16 @@ impl<'b> Bench<'b> {
         self.board
     }
 
+    /// The board whose layers may be tried.
+    pub fn layers_of(&self) -> &'b Board {
+        self.layers_of
+    }
+
+    /// What is measured, and against what.
+    pub fn setup(&self) -> &'b CheckSetup {
+        self.setup
+    }
+
     /// Works variants out, in their order.
     pub fn measure(&self, named: Vec<(String, Net)>, watch: &dyn Watch) -> Vec<Variant> {
         watch.begin("variants", named.len());
