@@ -4,8 +4,10 @@
 //! holds the driver, layers and receivers it names, so no later stage looks anything up.
 
 mod read;
+mod rewrite;
 
 pub use read::{Reading, UnusableNet, read_board};
+pub use rewrite::{RewriteError, rewrite_board};
 
 use std::sync::Arc;
 

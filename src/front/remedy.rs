@@ -4,18 +4,19 @@ use std::path::{Path, PathBuf};
 
 use clap::Args;
 use rayon::prelude::*;
+use ringfield::board::{Net, rewrite_board};
 use ringfield::show::{
     self, CheckReport, RemedyReport, remedy_csv, remedy_json, remedy_table,
     variants_spectrum_picture,
 };
-use ringfield::study::CheckSetup;
 use ringfield::study::compare::{Bench, comparison};
 use ringfield::study::remedy::{Goal, Outcome, remedy};
+use ringfield::study::{CheckSetup, NOTICE};
 
 use super::output::{self, Output, check_places};
 use super::progress::Progress;
 use super::question::{Asked, Question};
-use super::{Ending, Refusal, options};
+use super::{Ending, Refusal, input, options};
 
 /// The board, what is to be reached, and where the answers go.
 #[derive(Debug, Args)]
@@ -122,10 +123,27 @@ fn outputs(
     if let Some(path) = &options.csv {
         push(path, remedy_csv(report));
     }
+    if let Some(path) = &options.write {
+        push(path, rewritten(options, report)?);
+    }
     if let Some(folder) = &options.plot {
         outputs.extend(pictures(report, setup, folder));
     }
     Ok(outputs)
+}
+
+/// The board file with the remedies in place.
+fn rewritten(options: &Options, report: &RemedyReport) -> Result<String, Refusal> {
+    let board = &options.question.board;
+    let changed: Vec<Net> = (report.nets.iter())
+        .filter(|net| matches!(net.outcome, Outcome::Found(_)))
+        .map(|net| net.after().net.clone())
+        .collect();
+    let remark = format!(
+        "Remedies put in by ringfield; what was there is kept as comments. {NOTICE}, see `ringfield check`."
+    );
+    let text = input::read_text(board)?;
+    rewrite_board(&text, &board.display().to_string(), &changed, &remark).map_err(Refusal::new)
 }
 
 /// Before and after, for every remedied net and distance.

@@ -3,10 +3,12 @@
 mod diagnostic;
 mod fields;
 mod quantity;
+mod written;
 mod yaml;
 
 pub use diagnostic::{Diagnostic, Place, Position, Severity, SourceLine, near_miss};
 
 pub use fields::{Fields, Range, Report, alternatives};
 pub use quantity::{Dimension, QuantityError, parse_quantity};
+pub use written::{farads, henries, metres, ohms, seconds, volts};
 pub use yaml::{Document, Key, Located, Node, Value, parse_yaml};

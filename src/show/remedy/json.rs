@@ -48,7 +48,8 @@ struct AttemptEntry {
 #[derive(Serialize)]
 struct LeverEntry {
     change: String,
-    margin_db: f64,
+    /// `null` where nothing is left that could be estimated.
+    margin_db: Option<f64>,
     suffices: bool,
 }
 
@@ -109,7 +110,7 @@ fn net_entry<'a>(
         levers: (levers.iter())
             .map(|found| LeverEntry {
                 change: lever(found),
-                margin_db: found.reach.margin_db,
+                margin_db: Some(found.reach.margin_db).filter(|margin| margin.is_finite()),
                 suffices: found.reach.suffices,
             })
             .collect(),

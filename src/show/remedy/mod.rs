@@ -9,9 +9,9 @@ pub use json::remedy_json;
 pub use table::remedy_table;
 
 use super::CheckReport;
-use crate::study::change::metres;
-use crate::study::change::{Change, ohms, seconds};
+use crate::study::change::Change;
 use crate::study::remedy::{Cost, Goal, Lever, LeverChange, Remedied};
+use crate::text::{metres, ohms};
 
 /// The answer of a search for remedies, ready to be shown.
 #[derive(Debug, Clone)]
@@ -49,7 +49,8 @@ fn lever(lever: &Lever) -> String {
             format!("length {} -> {}", length(now_m), length(*to_m))
         }
         (Some(Change::Rise(to_s)), Some(now_s)) => {
-            format!("rise {} -> {}", seconds(now_s), seconds(*to_s))
+            let ns = |s: f64| super::words::trimmed(s * 1e9, 3);
+            format!("rise {} -> {} ns", ns(now_s), ns(*to_s))
         }
         _ => tried.to_string(),
     }

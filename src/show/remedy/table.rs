@@ -6,6 +6,7 @@ use super::{RemedyReport, cost, lever, range};
 use crate::show::compare::{ASSUMED_THRESHOLDS, push_table};
 use crate::show::table::{plain_table, push_foot, push_unusable, push_warnings};
 use crate::show::words;
+use crate::study::change::terminations;
 use crate::study::compare::Variant;
 use crate::study::remedy::{Attempt, Hopeless, Outcome, Remedied, Remedy};
 
@@ -125,6 +126,7 @@ fn push_remedy(text: &mut String, net: &Remedied, remedy: &Remedy) {
         );
     }
     text.push('\n');
+    push_taken_out(text, net, remedy);
     for (was, is) in
         (net.before.result.signal.receivers.iter()).zip(&remedy.after.result.signal.receivers)
     {
@@ -141,6 +143,17 @@ fn push_remedy(text: &mut String, net: &Remedied, remedy: &Remedy) {
         );
     }
     push_attempts(text, "cheaper, but not enough", &remedy.cheaper);
+}
+
+/// Says which parts of now the remedy does without.
+fn push_taken_out(text: &mut String, net: &Remedied, remedy: &Remedy) {
+    let kept = terminations(&remedy.after.net);
+    let gone: Vec<String> = (terminations(&net.before.net).into_iter())
+        .filter(|part| !kept.contains(part))
+        .collect();
+    if !gone.is_empty() {
+        let _ = writeln!(text, "  in place of what is there now: {}", gone.join(", "));
+    }
 }
 
 fn push_hopeless(text: &mut String, net: &Remedied, hopeless: &Hopeless, goal: f64) {
@@ -174,12 +187,13 @@ fn push_hopeless(text: &mut String, net: &Remedied, hopeless: &Hopeless, goal: f
         }
         let _ = writeln!(text, "  {with} {what}");
         for found in levers {
-            let _ = writeln!(
-                text,
-                "    {}: {:.1} dB",
-                lever(found),
-                found.reach.margin_db
-            );
+            let margin_db = found.reach.margin_db;
+            let comes_to = if margin_db.is_finite() {
+                format!("{margin_db:.1} dB")
+            } else {
+                "between two planes, which contain it; its ends and vias are left to see to".into()
+            };
+            let _ = writeln!(text, "    {}: {comes_to}", lever(found));
         }
     }
 }

@@ -22,7 +22,7 @@ mod words;
 
 pub use apply::ApplyError;
 pub use read::{TryError, read_sweep, read_try};
-pub use words::{farads, henries, metres, ohms, seconds, volts};
+pub use words::terminations;
 
 use crate::board::{Board, Net};
 

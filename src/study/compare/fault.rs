@@ -50,6 +50,15 @@ pub enum Fault {
         /// What they are rated for.
         rating_a: f64,
     },
+    /// A receiver is overshot more than it is now, and by more than a little.
+    RingsMore {
+        /// The receiver.
+        receiver: String,
+        /// The larger of overshoot and undershoot.
+        overshoot_v: f64,
+        /// What it is now.
+        before_v: f64,
+    },
     /// The driver's current at rest is more than it may carry.
     DriverCurrent {
         /// The current.
@@ -109,6 +118,14 @@ impl fmt::Display for Fault {
                 "the clamps of {receiver} carry {:.0} mA, over their rating of {:.0} mA",
                 peak_a * 1e3,
                 rating_a * 1e3
+            ),
+            Self::RingsMore {
+                receiver,
+                overshoot_v,
+                before_v,
+            } => write!(
+                f,
+                "{receiver} is overshot by {overshoot_v:.2} V, more than the {before_v:.2} V of now"
             ),
             Self::DriverCurrent { at_rest_a, most_a } => write!(
                 f,
@@ -177,4 +194,26 @@ pub(super) fn faults(variant: &Variant) -> Vec<Fault> {
         }
     }
     faults
+}
+
+/// What a variant makes worse than it is: overshoot over a share of the swing that is worth a word.
+pub(super) fn worsened(variant: &Variant, before: &Variant) -> Vec<Fault> {
+    const WORTH_A_WORD: f64 = 0.15;
+    /// Below this, more is no worse.
+    const ALIKE_V: f64 = 0.02;
+    let pairs = (variant.result.signal.receivers.iter()).zip(&before.result.signal.receivers);
+    pairs
+        .filter_map(|(now, was)| {
+            let overshoot_v = now.overshoot_v.max(now.undershoot_v);
+            let before_v = was.overshoot_v.max(was.undershoot_v);
+            let swing_v = now.rest_high_v - now.rest_low_v;
+            (overshoot_v > before_v + ALIKE_V && overshoot_v > WORTH_A_WORD * swing_v).then(|| {
+                Fault::RingsMore {
+                    receiver: now.name.clone(),
+                    overshoot_v,
+                    before_v,
+                }
+            })
+        })
+        .collect()
 }

@@ -95,6 +95,13 @@ impl Variant {
         fault::faults(self)
     }
 
+    /// Everything about it that is not safe, and what it makes worse than it was before.
+    pub fn faults_against(&self, before: &Self) -> Vec<Fault> {
+        let mut faults = self.faults();
+        faults.extend(fault::worsened(self, before));
+        faults
+    }
+
     /// The field of a harmonic at a distance.
     pub fn field_dbuv_per_m(&self, harmonic: usize, distance_m: f64) -> Option<f64> {
         let harmonic = self

@@ -31,8 +31,9 @@ pub struct Kind {
 
 /// Inductances of a ferrite-like part beside its resistance; both are sold as chip parts (E6 values).
 const INDUCTANCES_H: [f64; 2] = [33e-9, 100e-9];
-/// The capacitor of an RC termination holds this many round trips: at least 3 T / Z0 (from memory).
-const ROUND_TRIPS: f64 = 3.0;
+/// The capacitor of an RC termination is at least 3 T / Z0, T the flight time (from memory), and R C longer than the
+/// edge.
+const FLIGHT_TIMES: f64 = 3.0;
 /// Resistances below this are not worth a part.
 const LEAST_OHM: f64 = 10.0;
 
@@ -82,7 +83,9 @@ pub fn kinds(net: &Net) -> Vec<Kind> {
             SeriesPlace::Driver,
         ));
     }
-    let capacitance_f = e6_at_least(ROUND_TRIPS * longest_delay_s(&net.path) / line_ohm);
+    let held_s = FLIGHT_TIMES * longest_delay_s(&net.path);
+    let edge_s = driver.full_rise_s().max(driver.full_fall_s());
+    let capacitance_f = e6_at_least(held_s.max(edge_s) / line_ohm);
     kinds.push(Kind {
         cost: Cost::Parts(2 * ends),
         start_ohm: Some(line_ohm),

@@ -29,7 +29,7 @@ pub enum LeverChange {
 /// How far a lever gets.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Reach {
-    /// The margin it comes to.
+    /// The margin it comes to; infinite where nothing is left that could be estimated (between two planes).
     pub margin_db: f64,
     /// Whether that is enough, and safe.
     pub suffices: bool,

@@ -131,6 +131,7 @@ fn outcome(net: &Net, before: &Variant, bench: &Bench, goal: Goal, watch: &dyn W
     }
     let search = Search {
         net,
+        before,
         bench,
         goal,
         watch,
@@ -155,7 +156,7 @@ fn outcome(net: &Net, before: &Variant, bench: &Bench, goal: Goal, watch: &dyn W
     let attempt = |trial: &Trial| Attempt {
         tried: trial.tried.clone(),
         margin_db: trial.variant.margin_db(),
-        faults: trial.variant.faults(),
+        faults: search.faults(&trial.variant),
     };
     if let Some((cost, trial)) = made {
         let cheaper = attempts.iter().filter(|(_, other)| !search.makes_it(other));

@@ -7,7 +7,7 @@ use super::kinds::Kind;
 use crate::board::Net;
 use crate::study::Watch;
 use crate::study::change::Try;
-use crate::study::compare::{Bench, Variant};
+use crate::study::compare::{Bench, Fault, Variant};
 use crate::study::values::E24Step;
 
 /// Where to look first, in E24 steps from where a rule of thumb says: a factor 2 below to one of 3 above.
@@ -18,6 +18,8 @@ const FINE: [i32; 6] = [-3, -2, -1, 1, 2, 3];
 /// A search for one net.
 pub struct Search<'s> {
     pub net: &'s Net,
+    /// The net as it is.
+    pub before: &'s Variant,
     pub bench: &'s Bench<'s>,
     pub goal: Goal,
     pub watch: &'s dyn Watch,
@@ -39,7 +41,12 @@ impl Search<'_> {
     }
 
     pub fn is_safe(&self, variant: &Variant) -> bool {
-        variant.faults().is_empty()
+        self.faults(variant).is_empty()
+    }
+
+    /// What is not safe about a variant.
+    pub fn faults(&self, variant: &Variant) -> Vec<Fault> {
+        variant.faults_against(self.before)
     }
 
     /// What is left of ringing and slowness at the worst receiver.
