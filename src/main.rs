@@ -5,11 +5,13 @@ mod front;
 use std::process::ExitCode;
 
 use clap::Parser;
-use front::{Arguments, Command, check, limits};
+use front::{Arguments, Command, check, compare, limits, remedy};
 
 fn main() -> ExitCode {
     let outcome = match Arguments::parse().command {
         Command::Check(options) => check::run(&options),
+        Command::Compare(options) => compare::run(&options),
+        Command::Remedy(options) => remedy::run(&options),
         Command::Limits(options) => limits::run(&options),
     };
     front::finish(outcome)

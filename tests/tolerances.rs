@@ -34,6 +34,7 @@ fn setup() -> CheckSetup {
         limits: default_limits(),
         distances_m: vec![3.0, 10.0],
         site: Site::OpenArea,
+        heights: ringfield::radiation::Heights::default(),
         lowest_frequency_hz: 30e6,
         top_frequency_hz: 1e9,
         model_sigma_db: MODEL_SIGMA_DB,

@@ -4,8 +4,10 @@
 //! holds the driver, layers and receivers it names, so no later stage looks anything up.
 
 mod read;
+mod rewrite;
 
 pub use read::{NamedTolerance, Reading, UnusableNet, VariedNet, VariedNets, read_board};
+pub use rewrite::{RewriteError, rewrite_board};
 
 use std::sync::Arc;
 
@@ -140,6 +142,27 @@ pub struct Driver {
     pub thresholds: Thresholds,
     /// The shape of the edge.
     pub edge: EdgeShape,
+    /// Largest current it may carry for ever, where the file says.
+    pub max_current_a: Option<f64>,
+    /// Other strengths and edges that it can be set to.
+    pub settings: Vec<DriverSetting>,
+    /// The setting that the figures above are of; `None` is its usual one.
+    pub setting: Option<String>,
+}
+
+/// A strength or edge that a driver can be set to.
+#[derive(Debug, Clone, PartialEq)]
+pub struct DriverSetting {
+    /// Its name in the file.
+    pub name: String,
+    /// Output resistance in the low state.
+    pub low_resistance_ohm: f64,
+    /// Output resistance in the high state.
+    pub high_resistance_ohm: f64,
+    /// Rise time between the driver's thresholds.
+    pub rise_s: f64,
+    /// Fall time between them.
+    pub fall_s: f64,
 }
 
 /// Between which fractions of the swing an edge time is measured.
@@ -165,6 +188,19 @@ pub enum EdgeShape {
 }
 
 impl Driver {
+    /// The driver in one of its settings; `None` where it has no such.
+    pub fn with_setting(&self, name: &str) -> Option<Self> {
+        let setting = self.settings.iter().find(|setting| setting.name == name)?;
+        Some(Self {
+            low_resistance_ohm: setting.low_resistance_ohm,
+            high_resistance_ohm: setting.high_resistance_ohm,
+            rise_s: setting.rise_s,
+            fall_s: setting.fall_s,
+            setting: Some(setting.name.clone()),
+            ..self.clone()
+        })
+    }
+
     /// Whole duration of the rising edge, 0 to 100 %.
     pub fn full_rise_s(&self) -> f64 {
         self.rise_s / self.measured_share()
@@ -209,6 +245,8 @@ pub struct ReceiverPart {
     pub high_threshold_v: Option<f64>,
     /// Largest current the clamps are rated for.
     pub clamp_rating_a: Option<f64>,
+    /// Slowest edge that the input takes, 10 % to 90 %.
+    pub max_rise_s: Option<f64>,
     /// Lead and bond-wire inductance in front of the input.
     pub package_inductance_h: f64,
     /// Capacitance at the pin, in front of the inductance.

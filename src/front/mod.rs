@@ -1,12 +1,15 @@
 //! The command line. The only place that opens files, prints, and ends the program.
 
 pub mod check;
+pub mod compare;
 mod input;
 pub mod limits;
 mod options;
 mod output;
 mod pictures;
 mod progress;
+mod question;
+pub mod remedy;
 
 use std::process::ExitCode;
 
@@ -29,6 +32,10 @@ pub struct Arguments {
 pub enum Command {
     /// Tell which nets of a board will likely fail
     Check(check::Options),
+    /// Hold a net against itself under other terminations, edges or layouts
+    Compare(compare::Options),
+    /// Find what to solder in, for every net that does not likely pass
+    Remedy(remedy::Options),
     /// Tell what limit lines say
     Limits(limits::Options),
 }

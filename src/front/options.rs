@@ -36,6 +36,30 @@ pub fn distance(text: &str) -> Result<f64, String> {
     )
 }
 
+/// Height of the table.
+pub fn table_height(text: &str) -> Result<f64, String> {
+    let height_m = quantity(text, Dimension::Length)?;
+    in_range(
+        height_m,
+        0.1..=3.0,
+        "a height from 0.1 m to 3 m was expected",
+    )
+}
+
+/// The antenna's heights: one, or the lowest and the highest.
+pub fn antenna_heights(text: &str) -> Result<[f64; 2], String> {
+    let expected = "heights such as `1 m to 4 m`, or one height, from 0.5 m to 10 m were expected";
+    let height = |text: &str| {
+        let height_m = quantity(text.trim(), Dimension::Length)?;
+        in_range(height_m, 0.5..=10.0, expected)
+    };
+    let (lowest, highest) = text.split_once("to").unwrap_or((text, text));
+    match [height(lowest)?, height(highest)?] {
+        [lowest_m, highest_m] if lowest_m <= highest_m => Ok([lowest_m, highest_m]),
+        _ => Err(expected.into()),
+    }
+}
+
 /// The highest frequency to look at.
 pub fn frequency(text: &str) -> Result<f64, String> {
     let frequency_hz = quantity(text, Dimension::Frequency)?;
@@ -48,7 +72,15 @@ pub fn frequency(text: &str) -> Result<f64, String> {
 
 /// A standard deviation in dB; the unit may be left out.
 pub fn decibels(text: &str) -> Result<f64, String> {
-    let expected = "a spread from 0 dB to 40 dB was expected";
+    decibels_from_0_to_40(text, "a spread from 0 dB to 40 dB was expected")
+}
+
+/// A margin in dB; the unit may be left out.
+pub fn margin(text: &str) -> Result<f64, String> {
+    decibels_from_0_to_40(text, "a margin from 0 dB to 40 dB was expected")
+}
+
+fn decibels_from_0_to_40(text: &str, expected: &str) -> Result<f64, String> {
     let number = text.trim().strip_suffix("dB").unwrap_or(text).trim();
     let decibels = number.parse().map_err(|_| expected.to_string())?;
     in_range(decibels, 0.0..=40.0, expected)
@@ -91,6 +123,15 @@ mod tests {
         assert!(distance("3").is_err());
         assert!(distance("0.5 m").is_err());
         assert!(distance("100 m").is_err());
+    }
+
+    #[test]
+    fn heights_are_one_or_a_rising_pair() {
+        assert_eq!(antenna_heights("1 m to 4 m"), Ok([1.0, 4.0]));
+        assert_eq!(antenna_heights("150 cm"), Ok([1.5, 1.5]));
+        assert!(antenna_heights("4 m to 1 m").is_err());
+        assert!(antenna_heights("1 to 4").is_err());
+        assert!(table_height("80 cm").is_ok() && table_height("0 m").is_err());
     }
 
     #[test]

@@ -17,6 +17,26 @@ pub struct Output {
     pub contents: Vec<u8>,
 }
 
+/// Finds out before the work whether every answer could be written. `-` stands for standard output.
+pub fn check_places(files: &[Option<&Path>], folder: Option<&Path>) -> Result<(), Refusal> {
+    let files: Vec<&Path> = files
+        .iter()
+        .flatten()
+        .copied()
+        .filter(|path| *path != Path::new("-"))
+        .collect();
+    for (index, path) in files.iter().enumerate() {
+        if files[..index].contains(path) {
+            return Err(Refusal::new(format!(
+                "two answers would be written to `{}`",
+                path.display()
+            )));
+        }
+        check_file(path)?;
+    }
+    folder.map_or(Ok(()), check_new_folder)
+}
+
 /// Finds out before the work whether a file could be written.
 pub fn check_file(path: &Path) -> Result<(), Refusal> {
     if path.is_dir() {

@@ -215,6 +215,7 @@ mod tests {
             low_threshold_v: None,
             high_threshold_v: None,
             clamp_rating_a: None,
+            max_rise_s: None,
             package_inductance_h: 0.0,
             package_capacitance_f: 0.0,
         };

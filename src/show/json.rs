@@ -10,6 +10,11 @@ use crate::study::{ClampSignal, Harmonic, NetResult, ReceiverSignal, Signal};
 
 /// The whole report as one JSON object; a number that is not finite is `null`.
 pub fn check_json(report: &CheckReport) -> String {
+    document(report, report.nets.iter().map(net_entry).collect())
+}
+
+/// What a report says of the whole board, around what it says of each net.
+pub(super) fn document<Entry: Serialize>(report: &CheckReport, nets: Vec<Entry>) -> String {
     let document = Document {
         notice: NOTICE,
         board: &report.board,
@@ -24,7 +29,7 @@ pub fn check_json(report: &CheckReport) -> String {
             })
             .collect(),
         remarks: &report.remarks,
-        nets: report.nets.iter().map(net_entry).collect(),
+        nets,
         unusable: report
             .unusable
             .iter()
@@ -41,13 +46,13 @@ pub fn check_json(report: &CheckReport) -> String {
 }
 
 #[derive(Serialize)]
-struct Document<'a> {
+struct Document<'a, Entry> {
     notice: &'static str,
     board: &'a str,
     site: &'static str,
     limits: Vec<LimitEntry<'a>>,
     remarks: &'a [String],
-    nets: Vec<NetEntry<'a>>,
+    nets: Vec<Entry>,
     unusable: Vec<UnusableEntry<'a>>,
 }
 
@@ -65,7 +70,7 @@ struct UnusableEntry<'a> {
 }
 
 #[derive(Serialize)]
-struct NetEntry<'a> {
+pub(super) struct NetEntry<'a> {
     name: &'a str,
     clock_hz: f64,
     verdict: &'static str,
@@ -141,7 +146,7 @@ struct ClampEntry {
     high: Option<f64>,
 }
 
-fn net_entry(net: &NetResult) -> NetEntry<'_> {
+pub(super) fn net_entry(net: &NetResult) -> NetEntry<'_> {
     NetEntry {
         name: &net.name,
         clock_hz: net.clock_hz,

@@ -2,21 +2,30 @@
 //!
 //! Nothing here prints or opens a file; the front does. Every output carries [`NOTICE`].
 
+mod compare;
 mod csv;
 mod findings;
 mod json;
 mod limit_listing;
 mod plot;
+mod remedy;
 #[cfg(test)]
 mod samples;
 mod spread;
 mod table;
 mod words;
 
+pub use compare::{
+    CompareReport, SweepResult, comparison_csv, comparison_json, comparison_table, sweep_csv,
+};
 pub use csv::{harmonics_csv, waveform_csv};
 pub use json::check_json;
 pub use limit_listing::{limit_at_listing, limit_listing};
-pub use plot::{Picture, spectrum_picture, waveform_picture};
+pub use plot::{
+    Picture, spectrum_picture, sweep_picture, variants_spectrum_picture, variants_waveform_picture,
+    waveform_picture,
+};
+pub use remedy::{RemedyReport, remedy_csv, remedy_json, remedy_table};
 pub use table::{check_table, march_table};
 pub use words::distance;
 

@@ -153,7 +153,7 @@ fn push_findings(text: &mut String, nets: &[&NetResult]) {
     }
 }
 
-fn push_unusable(text: &mut String, report: &CheckReport) {
+pub(super) fn push_unusable(text: &mut String, report: &CheckReport) {
     if report.unusable.is_empty() {
         return;
     }
@@ -164,7 +164,7 @@ fn push_unusable(text: &mut String, report: &CheckReport) {
 }
 
 /// The remarks on the board, and every warning once with the nets it is about.
-fn push_warnings(text: &mut String, report: &CheckReport) {
+pub(super) fn push_warnings(text: &mut String, report: &CheckReport) {
     let mut warnings: Vec<(&str, Vec<&str>)> = Vec::new();
     for net in &report.nets {
         for warning in &net.warnings {
@@ -187,7 +187,7 @@ fn push_warnings(text: &mut String, report: &CheckReport) {
     }
 }
 
-fn push_foot(text: &mut String, report: &CheckReport) {
+pub(super) fn push_foot(text: &mut String, report: &CheckReport) {
     text.push('\n');
     for note in report.limits.iter().filter_map(LimitAt::note) {
         let _ = writeln!(text, "{note}");

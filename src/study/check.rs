@@ -7,7 +7,7 @@ use super::{FieldReading, Harmonic, NetResult, Worst};
 use crate::board::{Board, Net};
 use crate::limit::{Limit, LimitAt, limits_at};
 use crate::radiation::{
-    Antenna, Footing, Heights, LargePlane, Layout, LitNet, OwnPlane, Reading, Site, TestSite,
+    self, Antenna, Footing, Heights, LargePlane, Layout, LitNet, OwnPlane, Reading, Site, TestSite,
     lit_segments, loop_area_v_per_m,
 };
 use crate::ringing::{Network, Settled, settle};
@@ -43,6 +43,12 @@ impl CheckSetup {
             distances_m: self.distances_m.clone(),
         }
     }
+}
+
+/// Why a cable of the board cannot hang as described on the site; `None` if all can.
+pub fn cable_objection(board: &Board, setup: &CheckSetup) -> Option<String> {
+    let cables = board.cables.as_deref()?;
+    radiation::cable_objection(board.plane.as_ref()?, cables, &setup.test_site())
 }
 
 /// Every net of a board, in its order, on the board's own antenna; several nets at a time.

@@ -1,14 +1,20 @@
 //! Studies: what a user asks of the pipeline, answered for one net or many.
 
 mod band;
+pub mod change;
 mod check;
+pub mod compare;
+pub mod remedy;
 mod signal;
 mod tolerance;
+mod values;
 mod verdict;
 
 pub use crate::watch::{Unwatched, Watch};
 pub use band::scan_band_hz;
-pub use check::{CheckSetup, RungNet, board_antenna, check, judge_all, ring, ring_all};
+pub use check::{
+    CheckSetup, RungNet, board_antenna, cable_objection, check, judge_all, ring, ring_all,
+};
 pub use signal::{ClampSignal, ReceiverSignal, Signal};
 pub use tolerance::{
     Carried, CarriedBy, FEWEST_DRAWS, MOST_DRAWS, MarginSpread, Spread, check_drawn, spread_all,

@@ -8,7 +8,8 @@ pub const MODEL_SIGMA_DB: f64 = 5.0;
 pub const INSTRUMENT_SIGMA_DB: f64 = 3.15;
 
 const LIKELY_FAIL_FROM: f64 = 0.5;
-const MARGINAL_FROM: f64 = 0.05;
+/// From this chance of failing on, a net no longer likely passes.
+pub(super) const MARGINAL_FROM: f64 = 0.05;
 
 /// A word for the chance of failing.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -62,6 +63,20 @@ pub fn chance_of_failing(margin_db: f64, sigma_db: f64) -> f64 {
     0.5 * libm::erfc(margin_db / sigma_db / std::f64::consts::SQRT_2)
 }
 
+/// The margin that leaves just less than a chance of failing between nothing and a half.
+pub(super) fn margin_for_chance_db(chance: f64, sigma_db: f64) -> f64 {
+    let (mut fails, mut passes) = (0.0, 40.0 * sigma_db);
+    for _ in 0..60 {
+        let middle = (fails + passes) / 2.0;
+        if chance_of_failing(middle, sigma_db) < chance {
+            passes = middle;
+        } else {
+            fails = middle;
+        }
+    }
+    passes
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -72,6 +87,17 @@ mod tests {
         assert!((chance_of_failing(0.0, 6.0) - 0.5).abs() < 1e-15);
         assert!((chance_of_failing(1.644_854 * 6.0, 6.0) - 0.05).abs() < 1e-7);
         assert!((chance_of_failing(-1.644_854 * 6.0, 6.0) - 0.95).abs() < 1e-7);
+    }
+
+    /// Quantile as above; the margin found is on the passing side.
+    #[test]
+    fn the_margin_for_a_chance_is_its_quantile() {
+        let margin_db = margin_for_chance_db(0.05, 6.0);
+        assert!((margin_db - 1.644_854 * 6.0).abs() < 1e-5);
+        assert_eq!(
+            Verdict::of(chance_of_failing(margin_db, 6.0)),
+            Verdict::LikelyPass
+        );
     }
 
     #[test]

@@ -4,6 +4,7 @@ mod diagnostic;
 mod draw;
 mod fields;
 mod quantity;
+mod written;
 mod yaml;
 
 pub use diagnostic::{Diagnostic, Place, Position, Severity, SourceLine, near_miss};
@@ -13,4 +14,5 @@ pub use fields::{Fields, Range, Report, alternatives};
 pub use quantity::{
     Dimension, Distribution, QuantityError, Stated, Tolerance, parse_quantity, parse_stated,
 };
+pub use written::{farads, henries, metres, ohms, seconds, volts};
 pub use yaml::{Document, Key, Located, Node, Value, parse_yaml};

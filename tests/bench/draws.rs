@@ -26,6 +26,7 @@ fn main() {
         limits: default_limits(),
         distances_m: vec![3.0, 10.0],
         site: Site::OpenArea,
+        heights: ringfield::radiation::Heights::default(),
         lowest_frequency_hz: 30e6,
         top_frequency_hz: 1e9,
         model_sigma_db: MODEL_SIGMA_DB,
@@ -85,7 +86,13 @@ fn main() {
         "field and margin",
         Box::new(move |_| {
             let net = rung.pop().into_iter().collect();
-            black_box(judge_all(&LargePlane, net, &setup, &Unwatched));
+            let test_site = setup.test_site();
+            black_box(judge_all(
+                &LargePlane { test_site },
+                net,
+                &setup,
+                &Unwatched,
+            ));
         }),
     );
 }

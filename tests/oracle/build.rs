@@ -18,6 +18,9 @@ pub fn driver(swing_v: f64, resistance_ohm: f64, edge_s: f64) -> Driver {
         fall_s: edge_s,
         thresholds: Thresholds::Full,
         edge: EdgeShape::Ramp,
+        max_current_a: None,
+        settings: Vec::new(),
+        setting: None,
     }
 }
 
@@ -80,6 +83,7 @@ pub fn part(capacitance_f: f64) -> ReceiverPart {
         clamp_rating_a: None,
         package_inductance_h: 0.0,
         package_capacitance_f: 0.0,
+        max_rise_s: None,
     }
 }
 

@@ -7,7 +7,7 @@ use super::super::{Along, Driver, Layer, Net, Plane, ReceiverPart};
 use super::antenna::in_mm;
 use super::definitions::{Definitions, Part, Unavailable};
 use super::path::PathReader;
-use crate::text::{Dimension, Fields, Node, Range, Report};
+use crate::text::{Dimension, Fields, Node, Range, Report, alternatives, near_miss};
 
 const DEFAULT_DUTY: f64 = 0.5;
 /// Rounding that a comparison of times and lengths allows for.
@@ -36,9 +36,10 @@ impl NetReader<'_> {
     }
 
     fn read(&self, node: &Node, unreadable: &RefCell<Option<String>>) -> Option<Net> {
-        const FIELDS: [&str; 7] = [
+        const FIELDS: [&str; 8] = [
             "name",
             "driver",
+            "setting",
             "clock",
             "duty",
             "path",
@@ -53,7 +54,8 @@ impl NetReader<'_> {
         }
         let driver = fields
             .require_name("driver")
-            .and_then(|name| self.find(self.drivers, fields.get("driver")?, &name, unreadable));
+            .and_then(|name| self.find(self.drivers, fields.get("driver")?, &name, unreadable))
+            .and_then(|driver| set(&fields, driver));
         // Each draw would have lines, and an antenna, of its own.
         let clock_hz = self.report.refusing_tolerances(
             "the lines of a net stay where they are in all draws",
@@ -131,6 +133,29 @@ impl NetReader<'_> {
         }
         Some(distance_m)
     }
+}
+
+/// The driver in the setting that the net asks for.
+fn set(fields: &Fields, driver: Arc<Driver>) -> Option<Arc<Driver>> {
+    let Some(node) = fields.get("setting") else {
+        return Some(driver);
+    };
+    let name = fields.name("setting")?;
+    if let Some(set) = driver.with_setting(&name) {
+        return Some(Arc::new(set));
+    }
+    let known: Vec<&str> = driver.settings.iter().map(|s| s.name.as_str()).collect();
+    let message = format!("driver `{}` has no setting `{name}`", driver.name);
+    let expected = match known.as_slice() {
+        [] => "no `setting`: the driver defines no `settings`".into(),
+        known => format!("one that it defines: {}", alternatives(known, "or")),
+    };
+    fields.report.error(node, message, |diagnostic| {
+        diagnostic
+            .expected(expected)
+            .near_miss(near_miss(&name, known))
+    });
+    None
 }
 
 /// Reports edges that do not fit into the high or the low time.

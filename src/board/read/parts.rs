@@ -1,11 +1,11 @@
 //! What nets are made of: layers, drivers and receivers.
 
 use super::super::{
-    Clamp, Driver, EdgeShape, HighClamp, Layer, ReceiverPart, Structure, Thresholds,
+    Clamp, Driver, DriverSetting, EdgeShape, HighClamp, Layer, ReceiverPart, Structure, Thresholds,
 };
 use super::corners::between_corners;
 use super::definitions::Part;
-use crate::text::{Dimension, Fields, Node, Range, Report, Value};
+use crate::text::{Dimension, Fields, Key, Node, Range, Report, Value};
 
 const DEFAULT_COPPER_M: f64 = 35e-6;
 const DEFAULT_LOSS_TANGENT: f64 = 0.02;
@@ -83,7 +83,7 @@ fn layer(report: &Report, name: &str, node: &Node) -> Option<Layer> {
 
 /// A driver.
 fn driver(report: &Report, name: &str, node: &Node) -> Option<Driver> {
-    const FIELDS: [&str; 9] = [
+    const FIELDS: [&str; 11] = [
         "swing",
         "low",
         "high",
@@ -93,6 +93,8 @@ fn driver(report: &Report, name: &str, node: &Node) -> Option<Driver> {
         "thresholds",
         "edge",
         "corners",
+        "max_current",
+        "settings",
     ];
     const THRESHOLDS: [(&str, Thresholds); 3] = [
         ("10-90", Thresholds::TenNinety),
@@ -110,20 +112,62 @@ fn driver(report: &Report, name: &str, node: &Node) -> Option<Driver> {
         .or(rise_s);
     let thresholds = fields.choice("thresholds", &THRESHOLDS).unwrap_or_default();
     let edge = fields.choice("edge", &EDGES).unwrap_or_default();
+    let max_current_a = fields.quantity("max_current", Dimension::Current, Range::Positive);
+    let usual = DriverSetting {
+        name: String::new(),
+        low_resistance_ohm: resistances?.0,
+        high_resistance_ohm: resistances?.1,
+        rise_s: rise_s?,
+        fall_s: fall_s?,
+    };
+    let settings = settings(&fields, &usual)?;
     let (low_v, high_v) = levels?;
-    let (low_resistance_ohm, high_resistance_ohm) = resistances?;
     let stated = Driver {
         name: name.to_owned(),
         low_v,
         high_v,
-        low_resistance_ohm,
-        high_resistance_ohm,
-        rise_s: rise_s?,
-        fall_s: fall_s?,
+        low_resistance_ohm: usual.low_resistance_ohm,
+        high_resistance_ohm: usual.high_resistance_ohm,
+        rise_s: usual.rise_s,
+        fall_s: usual.fall_s,
         thresholds,
         edge,
+        max_current_a,
+        settings,
+        setting: None,
     };
     between_corners(&fields, stated)
+}
+
+/// The settings of a driver; what one leaves out is as usual, and a fall is as its own rise.
+fn settings(driver: &Fields, usual: &DriverSetting) -> Option<Vec<DriverSetting>> {
+    let Some(node) = driver.get("settings") else {
+        return Some(Vec::new());
+    };
+    let expected = "a map from names to what differs, such as `slow: {rise: 3 ns}`";
+    let entries = driver
+        .report
+        .map(node, &driver.called("settings"), expected)?;
+    let setting = |(key, node): &(Key, Node)| {
+        let owner = format!("setting `{}` of {}", key.text, driver.owner);
+        let known = ["resistance", "rise", "fall"];
+        let fields = driver.report.fields(node, owner, &known)?;
+        let time = |field| fields.quantity(field, Dimension::Time, Range::Positive);
+        let (rise_s, fall_s) = (time("rise"), time("fall"));
+        let (low_resistance_ohm, high_resistance_ohm) = if fields.has("resistance") {
+            driver_resistances(&fields)?
+        } else {
+            (usual.low_resistance_ohm, usual.high_resistance_ohm)
+        };
+        Some(DriverSetting {
+            name: key.text.clone(),
+            low_resistance_ohm,
+            high_resistance_ohm,
+            rise_s: rise_s.unwrap_or(usual.rise_s),
+            fall_s: fall_s.or(rise_s).unwrap_or(usual.fall_s),
+        })
+    };
+    entries.iter().map(setting).collect()
 }
 
 /// The low and the high level of a driver.
@@ -179,14 +223,15 @@ pub(super) fn driver_resistances(fields: &Fields) -> Option<(f64, f64)> {
 
 /// A receiver.
 fn receiver(report: &Report, name: &str, node: &Node) -> Option<ReceiverPart> {
-    use Dimension::{Capacitance, Current, Inductance, Resistance, Voltage};
-    const FIELDS: [&str; 7] = [
+    use Dimension::{Capacitance, Current, Inductance, Resistance, Time, Voltage};
+    const FIELDS: [&str; 8] = [
         "capacitance",
         "resistance",
         "clamps",
         "low_threshold",
         "high_threshold",
         "clamp_rating",
+        "max_rise",
         "package",
     ];
     let fields = report.fields(node, format!("receiver `{name}`"), &FIELDS)?;
@@ -202,6 +247,7 @@ fn receiver(report: &Report, name: &str, node: &Node) -> Option<ReceiverPart> {
         fields.error(message, "`low_threshold` below `high_threshold`");
     }
     let clamp_rating_a = fields.quantity("clamp_rating", Current, Range::Positive);
+    let max_rise_s = fields.quantity("max_rise", Time, Range::Positive);
     let package = fields.get("package").and_then(|node| {
         report.fields(
             node,
@@ -223,6 +269,7 @@ fn receiver(report: &Report, name: &str, node: &Node) -> Option<ReceiverPart> {
         low_threshold_v,
         high_threshold_v,
         clamp_rating_a,
+        max_rise_s,
         package_inductance_h: package("inductance", Inductance).unwrap_or(0.0),
         package_capacitance_f: package("capacitance", Capacitance).unwrap_or(0.0),
     })

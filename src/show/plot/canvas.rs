@@ -84,8 +84,8 @@ impl Canvas {
         }
     }
 
-    /// Draws the limits; gives those that have a part in the picture.
-    pub fn draw_limits(&mut self, limits: &[&LimitAt]) -> Vec<DrawnLimit> {
+    /// Draws the limits; gives those that have a part in the picture. They are `grey` where colours tell other things.
+    pub fn draw_limits(&mut self, limits: &[&LimitAt], grey: bool) -> Vec<DrawnLimit> {
         let frequencies = self.x.range();
         let frequencies = (frequencies.0 * 1e6, frequencies.1 * 1e6);
         let mut drawn = Vec::new();
@@ -102,7 +102,10 @@ impl Canvas {
             if pieces.is_empty() {
                 continue;
             }
-            let pen = limit_pen(index);
+            let mut pen = limit_pen(index);
+            if grey {
+                pen.colour = GREY;
+            }
             for piece in &pieces {
                 self.picture.line(piece, pen);
                 self.obstacles.add_line(piece, COST_LIMIT);

@@ -8,10 +8,14 @@ mod picture;
 mod place;
 mod readings;
 mod spectrum;
+mod sweep;
+mod variants;
 mod waveform;
 
 pub use picture::Picture;
 pub use spectrum::spectrum_picture;
+pub use sweep::sweep_picture;
+pub use variants::{variants_spectrum_picture, variants_waveform_picture};
 pub use waveform::waveform_picture;
 
 use plotters::style::RGBColor;

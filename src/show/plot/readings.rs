@@ -8,6 +8,7 @@ use crate::study::NetResult;
 const DEPTH_DB: f64 = 90.0;
 
 /// One harmonic in the picture.
+#[derive(Clone, Copy)]
 pub(super) struct Line {
     pub number: usize,
     pub frequency_hz: f64,

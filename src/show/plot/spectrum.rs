@@ -57,7 +57,7 @@ pub fn spectrum_picture(report: &CheckReport, net: &NetResult, distance_m: f64) 
         (Some("Frequency (MHz)"), "Field strength (dBµV/m)"),
     );
     canvas.draw_harmonics(&lines);
-    let drawn = canvas.draw_limits(&limits);
+    let drawn = canvas.draw_limits(&limits, false);
     let worst = worst(report, distance_m, &lines).filter(|worst| worst.line.level >= levels.0);
     if let Some(worst) = &worst {
         canvas.mark_worst(worst);

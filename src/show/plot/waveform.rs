@@ -172,7 +172,7 @@ fn range(curves: &[Curve], scale: f64) -> (f64, f64) {
 }
 
 /// Which samples to draw: in every stretch its lowest and highest, so that no peak is lost.
-fn thinned(samples: &[f64], most: usize) -> Vec<usize> {
+pub(super) fn thinned(samples: &[f64], most: usize) -> Vec<usize> {
     let finite = (0..samples.len()).filter(|&index| samples[index].is_finite());
     if samples.len() <= most {
         return finite.collect();

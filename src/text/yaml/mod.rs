@@ -180,6 +180,11 @@ impl Document<'_> {
         }
     }
 
+    /// Where a part begins; `None` once finding places has cost too much.
+    pub fn place_of(&self, what: &impl Located) -> Option<Position> {
+        self.position(what.id())
+    }
+
     /// Finds a part by reading the text again and failing there: the parser tells places only of errors.
     fn position(&self, id: usize) -> Option<Position> {
         let left = self
