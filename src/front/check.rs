@@ -6,8 +6,11 @@ use clap::Args;
 use rayon::prelude::*;
 use ringfield::board::VariedNets;
 use ringfield::show::{
-    CheckReport, check_json, check_table, harmonics_csv, march_table, waveform_csv,
+    CheckReport, check_json, check_table, explanations_text, harmonics_csv, march_table,
+    waveform_csv,
 };
+use ringfield::study::compare::Bench;
+use ringfield::study::explain::{Explanation, explain};
 use ringfield::study::{NetResult, Verdict, check_drawn};
 
 use super::options;
@@ -44,6 +47,10 @@ pub struct Options {
     #[arg(long, value_name = "FILE")]
     waveform: Option<PathBuf>,
 
+    /// Tell also what each piece of a net contributes to its worst reading, and what halves it; best with `--net`
+    #[arg(long)]
+    explain: bool,
+
     /// Tell also how each settled waveform was reached
     #[arg(long)]
     verbose: bool,
@@ -60,10 +67,15 @@ pub fn run(options: &Options) -> Result<Ending, Refusal> {
 
     let incomplete = asked.is_incomplete();
     let varied = asked.varied.take();
+    let explanations = if options.explain {
+        explain_all(&asked)
+    } else {
+        Vec::new()
+    };
     let report = report(asked, varied.as_ref(), options.draws)?;
     let several = report.nets.len() + report.unusable.len() > 1;
     output::write(outputs(options, &report, several))?;
-    output::print(&answer(options, &report))?;
+    output::print(&answer(options, &report, &explanations))?;
 
     let fails = |net: &NetResult| net.verdict == Verdict::LikelyFail;
     Ok(if incomplete {
@@ -73,6 +85,14 @@ pub fn run(options: &Options) -> Result<Ending, Refusal> {
     } else {
         Ending::NoneLikelyFails
     })
+}
+
+/// What is behind the worst reading of every net asked for.
+fn explain_all(asked: &Asked) -> Vec<Explanation> {
+    let watch = Progress::new();
+    let bench = Bench::new(&asked.board.nets, &asked.board, &asked.setup, &watch)
+        .with_layers_of(&asked.whole);
+    explain(&bench, &watch)
 }
 
 /// Works out every net.
@@ -155,11 +175,12 @@ fn outputs(options: &Options, report: &CheckReport, several: bool) -> Vec<Output
 }
 
 /// What goes to standard output.
-fn answer(options: &Options, report: &CheckReport) -> String {
+fn answer(options: &Options, report: &CheckReport, explanations: &[Explanation]) -> String {
     if options.json.as_deref() == Some(Path::new("-")) {
         return check_json(report);
     }
     let mut text = check_table(report);
+    text.push_str(&explanations_text(explanations));
     if options.verbose {
         text.push('\n');
         text.push_str(&march_table(&report.nets));

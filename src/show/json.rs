@@ -6,6 +6,7 @@ use serde::Serialize;
 
 use super::spread::{SpreadEntry, spread_entry};
 use super::{CheckReport, NOTICE, words};
+use crate::radiation::Aim;
 use crate::study::{ClampSignal, Harmonic, NetResult, ReceiverSignal, Signal};
 
 /// The whole report as one JSON object; a number that is not finite is `null`.
@@ -93,6 +94,24 @@ struct WorstEntry<'a> {
     limit_dbuv_per_m: f64,
     margin_db: f64,
     mainly: &'static str,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    antenna: Option<AimEntry>,
+}
+
+/// Where the antenna reads a field.
+#[derive(Serialize)]
+struct AimEntry {
+    height_m: f64,
+    angle_deg: f64,
+    polarisation: &'static str,
+}
+
+fn aim_entry(aim: Aim) -> AimEntry {
+    AimEntry {
+        height_m: aim.antenna_height_m,
+        angle_deg: aim.angle_deg,
+        polarisation: words::polarisation(aim.polarisation),
+    }
 }
 
 #[derive(Serialize)]
@@ -112,6 +131,8 @@ struct FieldEntry {
     loops_dbuv_per_m: Option<f64>,
     charges_dbuv_per_m: Option<f64>,
     cable_dbuv_per_m: Option<f64>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    antenna: Option<AimEntry>,
 }
 
 #[derive(Serialize)]
@@ -161,6 +182,7 @@ pub(super) fn net_entry(net: &NetResult) -> NetEntry<'_> {
             limit_dbuv_per_m: worst.limit_dbuv_per_m,
             margin_db: worst.margin_db,
             mainly: worst.mechanism.as_str(),
+            antenna: worst.aim.map(aim_entry),
         }),
         harmonics: net
             .harmonics
@@ -194,6 +216,7 @@ fn harmonic_entry<'a>(harmonic: &Harmonic, signal: &'a Signal) -> HarmonicEntry<
                 loops_dbuv_per_m: field.loops_dbuv_per_m,
                 charges_dbuv_per_m: field.charges_dbuv_per_m,
                 cable_dbuv_per_m: field.cable_dbuv_per_m,
+                antenna: field.aim.map(aim_entry),
             })
             .collect(),
     }
@@ -272,6 +295,7 @@ mod tests {
                 "limit",
                 "limit_dbuv_per_m",
                 "mainly",
+                "antenna",
                 "margin_db"
             ]
         );
@@ -291,6 +315,7 @@ mod tests {
             keys(&harmonic["fields"][0]),
             [
                 "cable_dbuv_per_m",
+                "antenna",
                 "charges_dbuv_per_m",
                 "distance_m",
                 "field_dbuv_per_m",

@@ -4,6 +4,7 @@
 
 mod compare;
 mod csv;
+mod explain;
 mod findings;
 mod json;
 mod limit_listing;
@@ -19,6 +20,7 @@ pub use compare::{
     CompareReport, SweepResult, comparison_csv, comparison_json, comparison_table, sweep_csv,
 };
 pub use csv::{harmonics_csv, waveform_csv};
+pub use explain::explanations_text;
 pub use json::check_json;
 pub use limit_listing::{limit_at_listing, limit_listing};
 pub use plot::{

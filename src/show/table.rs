@@ -46,6 +46,7 @@ pub fn check_table(report: &CheckReport) -> String {
         text.push('\n');
     }
     push_spreads(&mut text, &nets);
+    push_aims(&mut text, &nets);
     push_findings(&mut text, &nets);
     push_unusable(&mut text, report);
     push_warnings(&mut text, report);
@@ -132,6 +133,32 @@ fn with_styled_verdict(line: &str, net: &NetResult) -> String {
             format!("{}{}", net.name, rest.replacen(word, &styled, 1))
         }
         None => line.to_string(),
+    }
+}
+
+/// Where the antenna stands for the worst reading of each net that does not likely pass, so that the laboratory can go
+/// there first.
+fn push_aims(text: &mut String, nets: &[&NetResult]) {
+    let failing = nets.iter().filter(|net| net.verdict != Verdict::LikelyPass);
+    let aims: Vec<String> = failing
+        .filter_map(|net| {
+            let worst = net.worst.as_ref()?;
+            let aim = words::aim(worst.aim.as_ref()?);
+            let (frequency, distance) = (
+                words::frequency(worst.frequency_hz),
+                words::distance(worst.distance_m),
+            );
+            Some(format!(
+                "  {}: {frequency} at {distance}: {aim}\n",
+                net.name
+            ))
+        })
+        .collect();
+    if !aims.is_empty() {
+        text.push_str(
+            "\nWhere the antenna reads the worst (its angle from the board's x axis, counter-clockwise from above):\n",
+        );
+        text.extend(aims);
     }
 }
 

@@ -1,7 +1,7 @@
 //! Numbers as people read them.
 
 use crate::limit::Detector;
-use crate::radiation::Site;
+use crate::radiation::{Aim, Polarisation, Site};
 
 /// A frequency with the unit that keeps it short: `48 MHz`, `1.248 GHz`.
 pub(super) fn frequency(frequency_hz: f64) -> String {
@@ -36,6 +36,24 @@ pub(super) fn chance(chance: f64) -> String {
         percent if percent > 99.0 => ">99 %".to_string(),
         percent => format!("{percent:.0} %"),
     }
+}
+
+/// How the antenna lies.
+pub(super) fn polarisation(polarisation: Polarisation) -> &'static str {
+    match polarisation {
+        Polarisation::Horizontal => "horizontal",
+        Polarisation::Vertical => "vertical",
+    }
+}
+
+/// Where the antenna reads a field.
+pub(super) fn aim(aim: &Aim) -> String {
+    format!(
+        "{}, {:.1} m up, at {:.0}°",
+        polarisation(aim.polarisation),
+        aim.antenna_height_m,
+        aim.angle_deg
+    )
 }
 
 /// The site as it is written on the command line.

@@ -1,14 +1,15 @@
 //! Will a net likely fail a scan?
 
 use super::Mechanism;
+use super::explain::Piece;
 use super::signal::signal;
 use super::verdict::{Verdict, chance_of_failing, total_sigma_db};
 use super::{FieldReading, Harmonic, NetResult, Worst};
 use crate::board::{Board, Net};
 use crate::limit::{Limit, LimitAt, limits_at};
 use crate::radiation::{
-    self, Antenna, Footing, Heights, LargePlane, Layout, LitNet, OwnPlane, Reading, Site, TestSite,
-    lit_segments, loop_area_v_per_m,
+    self, Antenna, Footing, Heights, LargePlane, Layout, LitNet, LitSegment, OwnPlane, Reading,
+    Site, TestSite, lit_segments, loop_area_v_per_m,
 };
 use crate::ringing::{Network, Settled, settle};
 use crate::spectrum::{Spectrum, spectrum};
@@ -230,6 +231,63 @@ fn readings(
         })
         .collect();
     antenna.readings(shared.frequency_hz, &lit)
+}
+
+/// The pieces of a net's route with what each contributes to its worst reading; `None` where the reading is not one
+/// of the net's.
+pub(super) fn segment_readings(
+    antenna: &dyn Antenna,
+    net: &RungNet,
+    worst: &Worst,
+    setup: &CheckSetup,
+) -> Option<Vec<Piece>> {
+    let place = worst
+        .harmonic
+        .checked_sub(*net.spectrum.harmonics.start())?;
+    let mut distances = setup.distances_m.iter();
+    let distance = distances.position(|&distance_m| distance_m == worst.distance_m)?;
+    let frequency_hz = net.spectrum.frequency_hz(place);
+    let whole = lit_segments(&net.network, &net.layout, &net.spectrum, place);
+    let footing = antenna.lay(&net.layout);
+    let only = |counts: &dyn Fn(usize) -> bool| LitNet {
+        frequency_hz,
+        footing: &footing,
+        segments: whole
+            .iter()
+            .enumerate()
+            .map(|(number, lit)| {
+                let share = if counts(number) { 1.0 } else { 0.0 };
+                LitSegment {
+                    outward_v: share * lit.outward_v,
+                    inward_v: share * lit.inward_v,
+                    ..*lit
+                }
+            })
+            .collect(),
+    };
+    let alone = (0..whole.len()).map(|piece| only(&|number| number == piece));
+    let without = (0..whole.len()).map(|piece| only(&|number| number != piece));
+    let nets: Vec<LitNet> = alone.chain(without).collect();
+    let readings = antenna.readings(frequency_hz, &nets);
+    let level = |number: usize| level_dbuv_per_m(readings[number][distance].field_v_per_m);
+    let piece = |(number, lit): (usize, &LitSegment)| {
+        let segment = lit.segment;
+        let half = (-lit.propagation_per_m * segment.length_m / 2.0).exp();
+        let (outward, inward) = (lit.outward_v * half, lit.inward_v * half);
+        Piece {
+            line: segment.line + 1,
+            start_m: segment.start_m,
+            end_m: [0, 1]
+                .map(|axis| segment.start_m[axis] + segment.direction[axis] * segment.length_m),
+            length_m: segment.length_m,
+            height_m: segment.height_m,
+            middle_current_a: ((outward - inward) / lit.impedance_ohm).norm(),
+            middle_voltage_v: (outward + inward).norm(),
+            alone_dbuv_per_m: level(number),
+            rest_dbuv_per_m: level(whole.len() + number),
+        }
+    };
+    Some(whole.iter().enumerate().map(piece).collect())
 }
 
 /// Fields and margins of one net, from the readings of each of its harmonics.

@@ -4,6 +4,7 @@ mod band;
 pub mod change;
 mod check;
 pub mod compare;
+pub mod explain;
 pub mod remedy;
 mod signal;
 mod tolerance;

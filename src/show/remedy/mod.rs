@@ -36,7 +36,7 @@ fn cost(cost: Cost) -> String {
 }
 
 /// What a lever changes, from what to what: `height 305 um (12 mil) -> 130 um (5.1 mil)`.
-fn lever(lever: &Lever) -> String {
+pub(super) fn lever(lever: &Lever) -> String {
     let tried = match &lever.tried {
         LeverChange::NoCables => return "no cable on the board".into(),
         LeverChange::Try(tried) => tried,

@@ -168,6 +168,11 @@ impl<'b> Bench<'b> {
         self.layers_of
     }
 
+    /// The antenna that the board is.
+    pub fn antenna(&self) -> &dyn Antenna {
+        self.antenna.as_ref()
+    }
+
     /// What is measured, and against what.
     pub fn setup(&self) -> &'b CheckSetup {
         self.setup

@@ -116,13 +116,40 @@ pub fn remedy(bench: &Bench, goal: Goal, watch: &dyn Watch) -> Vec<Remedied> {
     let before = bench.measure(named.collect(), watch);
     let nets = nets.iter().zip(before);
     nets.map(|(net, before)| {
-        let outcome = outcome(net, &before, bench, goal, watch);
+        let outcome = remedy_for(net, &before, bench, goal, watch);
         Remedied { before, outcome }
     })
     .collect()
 }
 
-fn outcome(net: &Net, before: &Variant, bench: &Bench, goal: Goal, watch: &dyn Watch) -> Outcome {
+/// How far each lever beside the parts would have to go for a net, worked out as it is.
+pub fn levers_for(
+    net: &Net,
+    before: &Variant,
+    bench: &Bench,
+    goal: Goal,
+    watch: &dyn Watch,
+) -> Vec<Lever> {
+    levers(
+        net,
+        &Search {
+            net,
+            before,
+            bench,
+            goal,
+            watch,
+        },
+    )
+}
+
+/// Looks for a remedy for one net, worked out as it is.
+pub fn remedy_for(
+    net: &Net,
+    before: &Variant,
+    bench: &Bench,
+    goal: Goal,
+    watch: &dyn Watch,
+) -> Outcome {
     if before.result.worst.is_none() {
         return Outcome::NotJudged;
     }
