@@ -18,10 +18,10 @@ impl Compression {
     /// Looks at examples, each a value of every field, until no field is off by more than a share of the largest.
     pub(super) fn new(examples: &[Vec<Complex64>], tolerance: f64) -> Self {
         let fields = examples[0].len();
-        let mut left: Vec<Vec<Complex64>> = (0..fields)
-            .map(|field| examples.iter().map(|example| example[field]).collect())
+        let mut left: Vec<Split> = (0..fields)
+            .map(|field| Split::new(examples.iter().map(|example| example[field])))
             .collect();
-        let mut sizes: Vec<f64> = left.iter().map(|column| square(column)).collect();
+        let mut sizes: Vec<f64> = left.iter().map(Split::square).collect();
         let largest = sizes.iter().copied().fold(0.0, f64::max);
         let mut kept = Vec::new();
         // By kept field, what each field has of its direction.
@@ -33,19 +33,16 @@ impl Compression {
             if sizes[best] <= tolerance * tolerance * largest {
                 break;
             }
-            let length = square(&left[best]).sqrt();
-            let direction: Vec<Complex64> = left[best].iter().map(|value| value / length).collect();
+            let direction = left[best].scaled(1.0 / left[best].square().sqrt());
             let mut part = vec![Complex64::ZERO; fields];
-            for field in 0..fields {
-                if kept.contains(&field) {
+            for (field, column) in left.iter_mut().enumerate() {
+                // A field that is kept has nothing left; one this small never will be.
+                if sizes[field] == 0.0 {
                     continue;
                 }
-                let column = &mut left[field];
-                part[field] = product(&direction, column);
-                for (value, along) in column.iter_mut().zip(&direction) {
-                    *value -= part[field] * along;
-                }
-                sizes[field] = square(column);
+                part[field] = direction.product(column);
+                column.take(part[field], &direction);
+                sizes[field] = column.square();
             }
             sizes[best] = 0.0;
             kept.push(best);
@@ -87,25 +84,61 @@ impl Compression {
     }
 }
 
-fn square(column: &[Complex64]) -> f64 {
-    column.iter().map(Complex64::norm_sqr).sum()
+/// Complex values, their parts apart, so that the loops become vector code.
+#[derive(Debug, Clone)]
+struct Split {
+    re: Vec<f64>,
+    im: Vec<f64>,
 }
 
-/// The scalar product, the first conjugated; in lanes, so that it becomes vector code.
-fn product(direction: &[Complex64], column: &[Complex64]) -> Complex64 {
-    let mut lanes = [Complex64::ZERO; 4];
-    let (heads, tails) = (direction.chunks_exact(4), column.chunks_exact(4));
-    let rest = heads.remainder().iter().zip(tails.remainder());
-    let mut sum: Complex64 = rest.map(|(a, b)| a.conj() * b).sum();
-    for (a, b) in heads.zip(tails) {
-        for (lane, (a, b)) in lanes.iter_mut().zip(a.iter().zip(b)) {
-            *lane += a.conj() * b;
+impl Split {
+    fn new(values: impl Iterator<Item = Complex64>) -> Self {
+        let (re, im) = values.map(|value| (value.re, value.im)).unzip();
+        Self { re, im }
+    }
+
+    fn square(&self) -> f64 {
+        dot(&self.re, &self.re) + dot(&self.im, &self.im)
+    }
+
+    fn scaled(&self, factor: f64) -> Self {
+        let scaled = |part: &Vec<f64>| part.iter().map(|value| factor * value).collect();
+        Self {
+            re: scaled(&self.re),
+            im: scaled(&self.im),
         }
     }
-    for lane in lanes {
-        sum += lane;
+
+    /// The scalar product with another, this one conjugated.
+    fn product(&self, other: &Self) -> Complex64 {
+        Complex64::new(
+            dot(&self.re, &other.re) + dot(&self.im, &other.im),
+            dot(&self.re, &other.im) - dot(&self.im, &other.re),
+        )
     }
-    sum
+
+    /// Takes a multiple of another away.
+    fn take(&mut self, factor: Complex64, other: &Self) {
+        let parts = self.re.iter_mut().zip(&mut self.im);
+        for ((re, im), (a, b)) in parts.zip(other.re.iter().zip(&other.im)) {
+            *re -= factor.re * a - factor.im * b;
+            *im -= factor.re * b + factor.im * a;
+        }
+    }
+}
+
+/// In lanes: a sum in order would forbid vector code.
+fn dot(a: &[f64], b: &[f64]) -> f64 {
+    let mut lanes = [0.0; 4];
+    let (heads, others) = (a.chunks_exact(4), b.chunks_exact(4));
+    let rest = heads.remainder().iter().zip(others.remainder());
+    let sum: f64 = rest.map(|(a, b)| a * b).sum();
+    for (a, b) in heads.zip(others) {
+        for (lane, (a, b)) in lanes.iter_mut().zip(a.iter().zip(b)) {
+            *lane += a * b;
+        }
+    }
+    sum + lanes.iter().sum::<f64>()
 }
 
 #[cfg(test)]

@@ -62,7 +62,8 @@ struct Leg {
 /// One field at one knot.
 #[derive(Debug, Clone, Copy)]
 pub(super) struct Spot {
-    pub(super) at_m: [f64; 3],
+    /// Number of the knot among all.
+    pub(super) knot: usize,
     kind: Kind,
 }
 
@@ -91,6 +92,7 @@ pub(super) struct Knots {
     axes: [Stretch; 2],
     legs: Vec<Leg>,
     spots: Vec<Spot>,
+    places_m: Vec<[f64; 3]>,
 }
 
 impl Knots {
@@ -121,7 +123,10 @@ impl Knots {
             axes: sides_m.map(|side_m| Stretch::new(side_m, k)),
             legs,
             spots: Vec::new(),
+            places_m: Vec::new(),
         };
+        let cables = knots.cables_m().into_iter().map(|(at_m, _)| at_m);
+        knots.places_m = knots.plane_m().into_iter().chain(cables).collect();
         knots.spots = knots.all_spots();
         knots
     }
@@ -159,8 +164,12 @@ impl Knots {
         self.spots.iter().copied().enumerate()
     }
 
+    /// Where all knots are, those of the plane first.
+    pub(super) fn places_m(&self) -> &[[f64; 3]] {
+        &self.places_m
+    }
+
     fn all_spots(&self) -> Vec<Spot> {
-        let plane_m = self.plane_m();
         let kinds = [
             Kind::Electric(0),
             Kind::Electric(1),
@@ -168,11 +177,14 @@ impl Knots {
             Kind::Magnetic(0),
             Kind::Magnetic(1),
         ];
+        let plane = self.on_plane();
         let on_plane = kinds
             .into_iter()
-            .flat_map(|kind| plane_m.iter().map(move |&at_m| Spot { at_m, kind }));
-        let on_cables = self.cables_m().into_iter().map(|(at_m, way)| Spot {
-            at_m,
+            .flat_map(|kind| (0..plane).map(move |knot| Spot { knot, kind }));
+        let cables = self.cables_m();
+        let ways = cables.iter().map(|(_, way)| *way).enumerate();
+        let on_cables = ways.map(|(number, way)| Spot {
+            knot: plane + number,
             kind: Kind::Along(way),
         });
         on_plane.chain(on_cables).collect()

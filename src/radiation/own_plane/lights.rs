@@ -8,12 +8,13 @@
 //! The fields at all knots hang together ([`Compression`]), so that most places need only a few of them.
 
 use super::compression::Compression;
-use super::knots::Knots;
+use super::knots::{Knots, Spot};
 use super::stand::Stand;
 use crate::LIGHT_SPEED_M_PER_S;
 use crate::radiation::peak::vertex;
 use crate::radiation::site::Polarisation;
 use num_complex::Complex64;
+use std::collections::BTreeMap;
 use std::f64::consts::{PI, TAU};
 
 /// Places that show how the fields at the knots hang together: at least so many,
@@ -53,10 +54,67 @@ pub(super) struct Scan {
 pub(super) struct Lights {
     compression: Compression,
     columns: usize,
-    /// By way, the few fields: for each of them, all places.
-    fields: [Vec<Complex64>; 2],
+    /// By way.
+    fields: [Fields; 2],
     /// Of the rows, on the open-area site; there the two ways are read one at a time.
     heights_m: Vec<f64>,
+}
+
+/// The few fields of all places, for each field all places in a row, their parts apart so that the loops become
+/// vector code. Single precision is far finer than what the fields are known to.
+#[derive(Debug, Clone)]
+struct Fields {
+    places: usize,
+    re: Vec<f32>,
+    im: Vec<f32>,
+}
+
+impl Fields {
+    fn new(few: usize, places: usize) -> Self {
+        Self {
+            places,
+            re: vec![0.0; few * places],
+            im: vec![0.0; few * places],
+        }
+    }
+
+    fn set(&mut self, number: usize, place: usize, value: Complex64) {
+        self.re[number * self.places + place] = value.re as f32;
+        self.im[number * self.places + place] = value.im as f32;
+    }
+
+    fn squares(&self, few: &[Complex64]) -> Vec<f64> {
+        // So that no sum leaves the range of single precision.
+        let largest = few.iter().map(|factor| factor.norm()).fold(0.0, f64::max);
+        let scale = if largest > 0.0 { 1.0 / largest } else { 0.0 };
+        let (mut re, mut im) = (vec![0.0f32; self.places], vec![0.0f32; self.places]);
+        let fields = self
+            .re
+            .chunks_exact(self.places)
+            .zip(self.im.chunks_exact(self.places));
+        for (factor, (a, b)) in few.iter().zip(fields) {
+            let (c, d) = ((factor.re * scale) as f32, (factor.im * scale) as f32);
+            let sums = re.iter_mut().zip(&mut im);
+            for ((x, y), (a, b)) in sums.zip(a.iter().zip(b)) {
+                *x += a * c - b * d;
+                *y += a * d + b * c;
+            }
+        }
+        let square = |(re, im): (&f32, &f32)| {
+            let (re, im) = (f64::from(*re), f64::from(*im));
+            largest * largest * (re * re + im * im)
+        };
+        re.iter().zip(&im).map(square).collect()
+    }
+
+    fn at(&self, place: usize, few: &[Complex64]) -> Complex64 {
+        let value = |number: usize| {
+            let at = number * self.places + place;
+            Complex64::new(self.re[at].into(), self.im[at].into())
+        };
+        let factors = few.iter().enumerate();
+        factors.map(|(number, factor)| factor * value(number)).sum()
+    }
 }
 
 /// One place and way among all.
@@ -115,45 +173,48 @@ impl Lights {
         columns: usize,
         heights_m: Vec<f64>,
     ) -> Self {
-        let fields = knots.fields();
-        let shown = (fields / FIELDS_FOR_EACH_SHOWN)
+        let shown = (knots.fields() / FIELDS_FOR_EACH_SHOWN)
             .max(FEWEST_SHOWN)
             .min(sources.len());
         // Spread over rows and columns alike: steps of the golden section.
         let place = |i: usize| (i as f64 * 0.618_033_988_749_895).fract() * sources.len() as f64;
         let mut examples = Vec::with_capacity(2 * shown);
         for i in 0..shown {
-            let mut pair = [vec![Complex64::ZERO; fields], vec![Complex64::ZERO; fields]];
             let source = &sources[place(i) as usize];
-            for (field, spot) in knots.spots() {
-                let waves = source.at(spot.at_m);
-                for (example, wave) in pair.iter_mut().zip(waves) {
-                    example[field] = spot.of(&wave);
-                }
+            let waves: Vec<[Wave; 2]> = knots
+                .places_m()
+                .iter()
+                .map(|&at_m| source.at(at_m))
+                .collect();
+            for way in 0..2 {
+                let of_spot = |(_, spot): (usize, Spot)| spot.of(&waves[spot.knot][way]);
+                examples.push(knots.spots().map(of_spot).collect());
             }
-            examples.extend(pair);
         }
         let tolerance = FIELD_TOLERANCE * (frequency_hz / TOLERANCE_FROM_HZ).min(1.0);
         let compression = Compression::new(&examples, tolerance);
         let places = sources.len();
-        let few = compression.kept().len();
-        let mut of_ways = [
-            vec![Complex64::ZERO; few * places],
-            vec![Complex64::ZERO; few * places],
-        ];
+        let mut fields = [0, 1].map(|_| Fields::new(compression.kept().len(), places));
+        let mut by_knot: BTreeMap<usize, Vec<(usize, Spot)>> = BTreeMap::new();
         for (number, &field) in compression.kept().iter().enumerate() {
             let spot = knots.spot(field);
-            let range = number * places..(number + 1) * places;
-            let [first, second] = of_ways.each_mut().map(|way| &mut way[range.clone()]);
-            for ((first, second), source) in first.iter_mut().zip(second).zip(sources) {
-                let [a, b] = source.at(spot.at_m);
-                (*first, *second) = (spot.of(&a), spot.of(&b));
+            by_knot.entry(spot.knot).or_default().push((number, spot));
+        }
+        for (knot, spots) in by_knot {
+            let at_m = knots.places_m()[knot];
+            for (place, source) in sources.iter().enumerate() {
+                let waves = source.at(at_m);
+                for (number, spot) in &spots {
+                    for (fields, wave) in fields.iter_mut().zip(&waves) {
+                        fields.set(*number, place, spot.of(wave));
+                    }
+                }
             }
         }
         Self {
             compression,
             columns,
-            fields: of_ways,
+            fields,
             heights_m,
         }
     }
@@ -182,31 +243,14 @@ impl Lights {
 
     /// What is picked up of every place, squared, by way.
     fn squares(&self, few: &[Complex64]) -> [Vec<f64>; 2] {
-        self.fields.each_ref().map(|fields| {
-            let places = fields.len() / few.len().max(1);
-            let mut sums = vec![Complex64::ZERO; places];
-            for (factor, values) in few.iter().zip(fields.chunks_exact(places)) {
-                for (sum, value) in sums.iter_mut().zip(values) {
-                    *sum += factor * value;
-                }
-            }
-            sums.iter().map(Complex64::norm_sqr).collect()
-        })
+        self.fields.each_ref().map(|fields| fields.squares(few))
     }
 
     /// What is picked up of a place: of one way on the open-area site, both in free space.
     pub(super) fn at(&self, Place { place, way }: Place, few: &[Complex64]) -> [Complex64; 2] {
-        let component = |fields: &Vec<Complex64>| {
-            let places = fields.len() / few.len().max(1);
-            let values = fields.iter().skip(place).step_by(places);
-            few.iter()
-                .zip(values)
-                .map(|(f, v)| f * v)
-                .sum::<Complex64>()
-        };
         match self.heights_m.is_empty() {
-            true => self.fields.each_ref().map(component),
-            false => [component(&self.fields[way]), Complex64::ZERO],
+            true => self.fields.each_ref().map(|fields| fields.at(place, few)),
+            false => [self.fields[way].at(place, few), Complex64::ZERO],
         }
     }
 

@@ -318,10 +318,10 @@ impl Response {
                 let values = answer.re[range.clone()]
                     .iter()
                     .zip(&answer.im[range.clone()]);
+                let (c, d) = (share.re as f32, share.im as f32);
                 for ((x, y), (a, b)) in re.iter_mut().zip(im.iter_mut()).zip(values) {
-                    let (a, b) = (f64::from(*a), f64::from(*b));
-                    *x += share.re * a - share.im * b;
-                    *y += share.re * b + share.im * a;
+                    *x += c * a - d * b;
+                    *y += c * b + d * a;
                 }
             }
         }
@@ -364,8 +364,8 @@ impl Response {
 /// Rows of a response at one frequency.
 pub(super) struct Rows {
     drives: usize,
-    re: Vec<f64>,
-    im: Vec<f64>,
+    re: Vec<f32>,
+    im: Vec<f32>,
 }
 
 impl Rows {
@@ -379,7 +379,8 @@ impl Rows {
         for (row, weight) in felt {
             let range = row * self.drives..(row + 1) * self.drives;
             let values = self.re[range.clone()].iter().zip(&self.im[range]);
-            for (sum, (re, im)) in sum.iter_mut().zip(values) {
+            for (sum, (&re, &im)) in sum.iter_mut().zip(values) {
+                let (re, im) = (f64::from(re), f64::from(im));
                 *sum += Complex64::new(
                     weight.re * re - weight.im * im,
                     weight.re * im + weight.im * re,
