@@ -10,6 +10,9 @@ use crate::study::compare::Variant;
 
 const GAP: f64 = 16.0;
 
+/// A figure of a variant, where it has one.
+type Figure = fn(&Variant) -> Option<f64>;
+
 /// Worst margin, overshoot and settling over the value.
 pub fn sweep_picture(report: &CheckReport, sweep: &SweepResult) -> Picture {
     let mut picture = page(
@@ -35,12 +38,12 @@ pub fn sweep_picture(report: &CheckReport, sweep: &SweepResult) -> Picture {
         return picture;
     };
     let across = Axis::linear((first, last), (PANEL_LEFT, PANEL_RIGHT));
-    let figures: [(&str, &dyn Fn(&Variant) -> Option<f64>); 3] = [
-        ("Worst margin (dB)", &|v| {
+    let figures: [(&str, Figure); 3] = [
+        ("Worst margin (dB)", |v| {
             v.result.worst.as_ref().map(|w| w.margin_db)
         }),
-        ("Overshoot (V)", &|v| Some(v.overshoot_v())),
-        ("Settling (ns)", &|v| v.settling_s().map(|s| s * 1e9)),
+        ("Overshoot (V)", |v| Some(v.overshoot_v())),
+        ("Settling (ns)", |v| v.settling_s().map(|s| s * 1e9)),
     ];
     let value_title = format!("{} ({})", sweep.label, sweep.unit);
     for (row, (title, figure)) in figures.into_iter().enumerate() {
