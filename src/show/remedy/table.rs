@@ -193,7 +193,9 @@ fn push_hopeless(text: &mut String, net: &Remedied, hopeless: &Hopeless, goal: f
             } else {
                 "between two planes, which contain it; its ends and vias are left to see to".into()
             };
-            let _ = writeln!(text, "    {}: {comes_to}", lever(found));
+            let fault = found.faults.first();
+            let unsafe_ = fault.map_or(String::new(), |fault| format!(", not safe: {fault}"));
+            let _ = writeln!(text, "    {}: {comes_to}{unsafe_}", lever(found));
         }
     }
 }
