@@ -179,8 +179,8 @@ fn push_hopeless(text: &mut String, net: &Remedied, hopeless: &Hopeless, goal: f
         .iter()
         .partition(|lever| lever.reach.suffices);
     for (levers, what) in [
-        (enough, "levers, each of which would do alone:"),
-        (short, "levers that would not do alone:"),
+        (enough, "levers, each of which would reach it alone:"),
+        (short, "levers that would not reach it alone:"),
     ] {
         if levers.is_empty() {
             continue;
