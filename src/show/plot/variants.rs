@@ -7,7 +7,7 @@ use super::canvas::Canvas;
 use super::page::{LegendEntry, PANEL_BOTTOM, PANEL_LEFT, PANEL_RIGHT, legend, page, panel, text};
 use super::picture::{Anchor, Marker, Pen, Picture, Point, Rect, Text};
 use super::place::Obstacles;
-use super::readings::{Line, frequency_range, level_range, lines};
+use super::readings::{Line, frequency_range, level_range, lines, worst};
 use super::waveform::thinned;
 use super::{BLACK, BLUE, GREEN, GREY, ORANGE, PURPLE, VERMILLION};
 use crate::limit::LimitAt;
@@ -61,7 +61,10 @@ pub fn variants_spectrum_picture(
             words::distance(distance_m),
             comparison.variants.len()
         ),
-        &subtitle(report, comparison),
+        &format!(
+            "{} · ringed: smallest margin here",
+            subtitle(report, comparison)
+        ),
     );
     let all: Vec<Line> = spectra.iter().flatten().copied().collect();
     let first = comparison.variants.first().map(|variant| &variant.result);
@@ -96,6 +99,11 @@ pub fn variants_spectrum_picture(
     );
     for (index, lines) in spectra.iter().enumerate().rev() {
         canvas.draw_variant(lines, look(index));
+    }
+    for lines in &spectra {
+        if let Some(worst) = worst(report, distance_m, lines) {
+            canvas.ring_worst(worst.line);
+        }
     }
     let drawn = canvas.draw_limits(&limits, true);
     for limit in &drawn {
@@ -230,6 +238,17 @@ fn curve(variant: &Variant, receiver: usize) -> Vec<Point> {
 }
 
 impl Canvas {
+    /// Rings the harmonic with the smallest margin.
+    fn ring_worst(&mut self, line: &Line) {
+        if line.level >= self.y.range().0 {
+            let at = (
+                self.x.place(line.frequency_hz / 1e6),
+                self.y.place(line.level),
+            );
+            self.picture.ring(at, 8.0, Pen::solid(BLACK, 1.67));
+        }
+    }
+
     /// A marker for every harmonic, and a line over those that stand above both of their neighbours.
     fn draw_variant(&mut self, lines: &[Line], look: Look) {
         let lowest = self.y.range().0;

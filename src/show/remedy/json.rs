@@ -51,6 +51,7 @@ struct LeverEntry {
     /// `null` where nothing is left that could be estimated.
     margin_db: Option<f64>,
     suffices: bool,
+    faults: Vec<String>,
 }
 
 fn before_and_after(net: &Remedied) -> Comparison {
@@ -112,6 +113,7 @@ fn net_entry<'a>(
                 change: lever(found),
                 margin_db: Some(found.reach.margin_db).filter(|margin| margin.is_finite()),
                 suffices: found.reach.suffices,
+                faults: found.faults.iter().map(ToString::to_string).collect(),
             })
             .collect(),
     }

@@ -179,8 +179,8 @@ fn push_hopeless(text: &mut String, net: &Remedied, hopeless: &Hopeless, goal: f
         .iter()
         .partition(|lever| lever.reach.suffices);
     for (levers, what) in [
-        (enough, "levers, each of which would do alone:"),
-        (short, "levers that would not do alone:"),
+        (enough, "levers, each of which would reach it alone:"),
+        (short, "levers that would not reach it alone:"),
     ] {
         if levers.is_empty() {
             continue;
@@ -193,7 +193,9 @@ fn push_hopeless(text: &mut String, net: &Remedied, hopeless: &Hopeless, goal: f
             } else {
                 "between two planes, which contain it; its ends and vias are left to see to".into()
             };
-            let _ = writeln!(text, "    {}: {comes_to}", lever(found));
+            let fault = found.faults.first();
+            let unsafe_ = fault.map_or(String::new(), |fault| format!(", not safe: {fault}"));
+            let _ = writeln!(text, "    {}: {comes_to}{unsafe_}", lever(found));
         }
     }
 }

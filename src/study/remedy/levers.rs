@@ -4,7 +4,7 @@ use super::search::Search;
 use crate::board::{Board, Net};
 use crate::study::Mechanism;
 use crate::study::change::{Change, Try};
-use crate::study::compare::Bench;
+use crate::study::compare::{Bench, Fault, Variant};
 
 /// Something beside the parts that moves the margin.
 #[derive(Debug, Clone, PartialEq)]
@@ -15,6 +15,8 @@ pub struct Lever {
     pub now: Option<f64>,
     /// How far it gets.
     pub reach: Reach,
+    /// What is not safe about it; a layout may want its terminations matched anew.
+    pub faults: Vec<Fault>,
 }
 
 /// A change of a lever.
@@ -31,7 +33,7 @@ pub enum LeverChange {
 pub struct Reach {
     /// The margin it comes to; infinite where nothing is left that could be estimated (between two planes).
     pub margin_db: f64,
-    /// Whether that is enough, and safe.
+    /// Whether that is enough; an edge must be safe, too.
     pub suffices: bool,
 }
 
@@ -106,24 +108,25 @@ fn slide(
         let Some(place) = enough else {
             return found.or_else(|| {
                 let (tried, variant) = measured.last()?;
-                Some(lever(tried.clone(), now, variant.margin_db(), false))
+                Some(lever(tried.clone(), now, variant, search, false))
             });
         };
         let (tried, variant) = &measured[place];
-        found = Some(lever(tried.clone(), now, variant.margin_db(), true));
+        found = Some(lever(tried.clone(), now, variant, search, true));
         (from, to) = (share(place), share(place + 1));
     }
     found
 }
 
-fn lever(tried: Try, now: f64, margin_db: f64, suffices: bool) -> Lever {
+fn lever(tried: Try, now: f64, variant: &Variant, search: &Search, suffices: bool) -> Lever {
     Lever {
         tried: LeverChange::Try(tried),
         now: Some(now),
         reach: Reach {
-            margin_db,
+            margin_db: variant.margin_db(),
             suffices,
         },
+        faults: search.faults(variant),
     }
 }
 
@@ -147,8 +150,9 @@ fn layers(net: &Net, search: &Search) -> Vec<Lever> {
             now: None,
             reach: Reach {
                 margin_db: variant.margin_db(),
-                suffices: variant.margin_db() >= search.goal.margin_db && search.is_safe(&variant),
+                suffices: variant.margin_db() >= search.goal.margin_db,
             },
+            faults: search.faults(&variant),
         })
         .collect()
 }
@@ -177,5 +181,6 @@ fn no_cables(net: &Net, search: &Search) -> Option<Lever> {
             margin_db,
             suffices: margin_db >= search.goal.margin_db,
         },
+        faults: Vec::new(),
     })
 }

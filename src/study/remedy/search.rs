@@ -79,7 +79,7 @@ impl Search<'_> {
     }
 
     /// The best of one kind: the quietest that makes it, else the safe one with the most margin, else the one with
-    /// the most margin.
+    /// the fewest faults.
     pub fn best(&self, kind: &Kind) -> Option<Trial> {
         let Some(start_ohm) = kind.start_ohm else {
             let (tried, variant) = self.measure(self.net, vec![(kind.at)(0.0)]).pop()?;
@@ -137,7 +137,11 @@ impl Search<'_> {
             .filter(|(_, variant)| self.is_made(variant))
             .min_by(|a, b| ripple_v(a.1).total_cmp(&ripple_v(b.1)))
             .or_else(|| found().filter(|(_, v)| self.is_safe(v)).max_by(most_margin))
-            .or_else(|| found().max_by(most_margin))
+            .or_else(|| {
+                // The least unsafe says best what stands in the way.
+                let faults = |v: &Variant| std::cmp::Reverse(self.faults(v).len());
+                found().max_by(|a, b| faults(a.1).cmp(&faults(b.1)).then(most_margin(a, b)))
+            })
             .map(|(step, _)| step)
     }
 }
