@@ -64,6 +64,11 @@ impl Compression {
         Self { kept, shares }
     }
 
+    /// Memory that it takes.
+    pub(super) fn bytes(&self) -> usize {
+        self.shares.len() * size_of::<Complex64>()
+    }
+
     /// The kept fields.
     pub(super) fn kept(&self) -> &[usize] {
         &self.kept

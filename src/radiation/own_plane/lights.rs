@@ -219,6 +219,12 @@ impl Lights {
         }
     }
 
+    /// Memory that they take.
+    pub(super) fn bytes(&self) -> usize {
+        let values: usize = self.fields.iter().map(|fields| 2 * fields.re.len()).sum();
+        values * size_of::<f32>() + self.compression.bytes()
+    }
+
     /// A net's factors of the few fields, from those of all at the knots.
     pub(super) fn few(&self, factors: &[Complex64]) -> Vec<Complex64> {
         self.compression.few(factors)

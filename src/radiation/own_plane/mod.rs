@@ -26,7 +26,10 @@ use lights::{Lights, Scan};
 use num_complex::Complex64;
 use response::Response;
 use stand::Stand;
+use std::collections::HashMap;
 use std::f64::consts::TAU;
+use std::sync::atomic::{AtomicUsize, Ordering};
+use std::sync::{Arc, Mutex};
 
 /// Up to here the solver has been compared with others; above, the mesh is that of this frequency.
 pub const COMPARED_TO_HZ: f64 = 2e9;
@@ -50,6 +53,8 @@ pub struct OwnPlane {
     /// Over the floor, and above it or on a site that has none.
     bands: Vec<Band>,
     frequency_share: f64,
+    /// Lights that may be wanted again, for another net or variant.
+    kept: Kept,
 }
 
 /// A band with one mesh.
@@ -71,6 +76,33 @@ struct Variant {
     /// From the middle of everything to its farthest end, and from the turntable's axis, level.
     reach_m: f64,
     level_reach_m: f64,
+}
+
+/// Lights by variant, distance and frequency; so many bytes of them at most.
+#[derive(Debug, Default)]
+struct Kept {
+    lights: Mutex<HashMap<(usize, usize, u64), Arc<Lights>>>,
+    bytes: AtomicUsize,
+}
+
+/// Lights are kept up to this much memory.
+const MOST_BYTES: usize = 96 << 20;
+
+impl Kept {
+    fn or_made(&self, key: (usize, usize, u64), make: &dyn Fn() -> Lights) -> Arc<Lights> {
+        let known = |kept: &Self| kept.lights.lock().ok()?.get(&key).cloned();
+        if let Some(lights) = known(self) {
+            return lights;
+        }
+        let made = Arc::new(make());
+        let bytes = self.bytes.fetch_add(made.bytes(), Ordering::Relaxed) + made.bytes();
+        if bytes <= MOST_BYTES
+            && let Ok(mut lights) = self.lights.lock()
+        {
+            lights.insert(key, Arc::clone(&made));
+        }
+        made
+    }
 }
 
 /// Why the first cable that cannot hang as described on a site cannot; `None` if all can.
@@ -134,6 +166,7 @@ impl OwnPlane {
                 true => 0.0,
                 false => FREQUENCY_SHARE,
             },
+            kept: Kept::default(),
         }
     }
 }
@@ -237,7 +270,8 @@ impl Antenna for OwnPlane {
                 .iter()
                 .map(|harmonic| &harmonic.footing.0[number][place])
                 .collect();
-            let readings = self.of_variant(frequency_hz, band, variant, harmonics, &footprints);
+            let readings =
+                self.of_variant(frequency_hz, band, (place, variant), harmonics, &footprints);
             if strongest.is_empty() {
                 strongest = readings;
                 continue;
@@ -285,7 +319,7 @@ impl OwnPlane {
         &self,
         shared_hz: f64,
         band: &Band,
-        variant: &Variant,
+        (number, variant): (usize, &Variant),
         harmonics: &[LitNet],
         footprints: &[&Footprints],
     ) -> Vec<Vec<Reading>> {
@@ -329,26 +363,29 @@ impl OwnPlane {
             .collect()
         };
         let distances_m = self.test_site.distances_m.iter();
+        let knots = &variant.whole.knots;
+        let kept = |scan: usize, light: &dyn Fn() -> Lights| {
+            let key = (number, scan, shared_hz.to_bits());
+            self.kept.or_made(key, light)
+        };
         let by_distance: Vec<Vec<Reading>> = if band.floor {
             distances_m
-                .map(|&distance_m| {
+                .enumerate()
+                .map(|(place, &distance_m)| {
                     let scan = self.scan(distance_m, variant);
-                    read(
-                        &Lights::scanned(shared_hz, &variant.whole.knots, &scan),
-                        &|_| 1.0,
-                    )
+                    let lights = kept(place, &|| Lights::scanned(shared_hz, knots, &scan));
+                    read(&lights, &|_| 1.0)
                 })
                 .collect()
         } else {
             let k = TAU * shared_hz / LIGHT_SPEED_M_PER_S;
             let [fewest, most] = STEPS_PER_HALF_TURN;
             let steps = (fewest + (2.0 * k * variant.reach_m) as usize).min(most);
-            let lights = Lights::all_round(shared_hz, &variant.whole.knots, steps);
+            let lights = kept(0, &|| Lights::all_round(shared_hz, knots, steps));
             distances_m
                 .map(|&d| {
-                    read(&lights, &|frequency_hz| {
-                        near_field_factor(frequency_hz, d) / d
-                    })
+                    let near = |frequency_hz| near_field_factor(frequency_hz, d) / d;
+                    read(&lights, &near)
                 })
                 .collect()
         };
