@@ -5,8 +5,8 @@ mod oracle;
 
 use num_complex::Complex64;
 use oracle::build::{driver, net, receiver, trace_on};
+use oracle::run::march;
 use ringfield::board::{Layer, Structure};
-use ringfield::ringing::{Network, settle};
 use ringfield::spectrum::spectrum;
 use std::sync::Arc;
 
@@ -57,9 +57,8 @@ fn every_clock_and_edge_settles_and_agrees_or_says_that_it_did_not() {
         let name = format!("{clock_hz:e} Hz, {edge_s:e} s, {length_m} m");
         let path = vec![trace_on(&layer, 101.6e-6, length_m), receiver("end", 2e-12)];
         let net = net(&name, driver(3.3, 1.0, edge_s), clock_hz, path);
-        let network = Network::of(&net);
         let top_hz = top_hz(clock_hz);
-        let settled = settle(&network, top_hz);
+        let (network, settled) = march(&net, top_hz);
         let spectrum = spectrum(&network, &settled, 30e6, top_hz);
         if !settled.report.settled {
             assert!(

@@ -4,9 +4,10 @@
 mod oracle;
 
 use oracle::build::{branch, driver, line, net, receiver, series, shunt, shunt_rlc, trace_on, via};
-use ringfield::board::{Driver, Layer, Net, PathItem, Structure};
-use ringfield::ringing::{Network, SettledWaveform, settle};
-use ringfield::spectrum::{Spectrum, spectrum};
+use oracle::run;
+use ringfield::board::{Driver, Layer, PathItem, Structure};
+use ringfield::ringing::SettledWaveform;
+use ringfield::spectrum::Spectrum;
 use std::sync::Arc;
 
 const TOP_HZ: f64 = 1e9;
@@ -67,12 +68,8 @@ fn drivers(low_v: f64, swing_v: f64) -> [Driver; 2] {
 }
 
 fn waveform(driver: &Driver, clock_hz: f64, path: Vec<PathItem>) -> SettledWaveform {
-    let settled = settle(
-        &Network::of(&net("linear", driver.clone(), clock_hz, path)),
-        TOP_HZ,
-    );
-    assert!(settled.report.settled, "{:?}", settled.report);
-    settled.waveform
+    let net = net("linear", driver.clone(), clock_hz, path);
+    run::settled(&net, TOP_HZ).1.waveform
 }
 
 /// Every sample of every voltage, and of the driver's current at 50 ohm.
@@ -171,11 +168,8 @@ fn rails_add() {
 }
 
 fn harmonics(path: Vec<PathItem>, clock_hz: f64) -> Spectrum {
-    let net: Net = net("trace", driver(3.3, 3.0, 0.8e-9), clock_hz, path);
-    let network = Network::of(&net);
-    let settled = settle(&network, TOP_HZ);
-    assert!(settled.report.settled, "{:?}", settled.report);
-    spectrum(&network, &settled, 30e6, TOP_HZ)
+    let net = net("trace", driver(3.3, 3.0, 0.8e-9), clock_hz, path);
+    run::harmonics(&net, 30e6, TOP_HZ)
 }
 
 /// The largest difference over driver current and first receiver, dB, within 50 dB of the strongest.

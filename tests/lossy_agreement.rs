@@ -8,9 +8,8 @@ mod oracle;
 
 use num_complex::Complex64;
 use oracle::build::{branch, driver, net, receiver, series, shunt, trace_on, via};
+use oracle::run::harmonics;
 use ringfield::board::{Layer, Net, PathItem, Structure};
-use ringfield::ringing::{Network, settle};
-use ringfield::spectrum::spectrum;
 use std::sync::Arc;
 
 const JUDGED_DB: f64 = 50.0;
@@ -47,10 +46,7 @@ fn trace(length_m: f64) -> PathItem {
 
 /// The largest disagreement in dB over all judged harmonics of driver current and receivers, and its place.
 fn worst_db(net: &Net, top_hz: f64) -> (f64, String) {
-    let network = Network::of(net);
-    let settled = settle(&network, top_hz);
-    assert!(settled.report.settled, "{}: {:?}", net.name, settled.report);
-    let spectrum = spectrum(&network, &settled, 30e6, top_hz);
+    let spectrum = harmonics(net, 30e6, top_hz);
     let exact: Vec<_> = spectrum
         .harmonics
         .clone()

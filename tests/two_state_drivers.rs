@@ -8,9 +8,9 @@ use num_complex::Complex64;
 use oracle::build::{
     clamped, driver, line, net, part, receiver, receiver_of, series, shunt, trace_on,
 };
+use oracle::run::harmonics;
 use ringfield::board::{Clamp, Driver, EdgeShape, Layer, Net, PathItem, Structure};
-use ringfield::ringing::{Network, settle};
-use ringfield::spectrum::{Spectrum, spectrum};
+use ringfield::spectrum::Spectrum;
 use std::f64::consts::{PI, SQRT_2, TAU};
 use std::sync::Arc;
 
@@ -24,13 +24,6 @@ fn two_state(high_ohm: f64, low_ohm: f64, edges_s: [f64; 2], edge: EdgeShape) ->
         edge,
         ..driver(3.3, low_ohm, edges_s[0])
     }
-}
-
-fn engine(net: &Net) -> Spectrum {
-    let network = Network::of(net);
-    let settled = settle(&network, TOP_HZ);
-    assert!(settled.report.settled, "{}: {:?}", net.name, settled.report);
-    spectrum(&network, &settled, 0.0, TOP_HZ)
 }
 
 /// Rms phasor of a harmonic of a function of the driver's high share (0 low, 1 high), by Simpson's rule over each edge
@@ -125,7 +118,7 @@ fn into_a_resistor() {
                 duty,
                 ..net(&name, driver.clone(), 40e6, path)
             };
-            let spectrum = engine(&net);
+            let spectrum = harmonics(&net, 0.0, TOP_HZ);
             let voltage_v = |share: f64| {
                 let own_ohm = driver.low_resistance_ohm
                     + (driver.high_resistance_ohm - driver.low_resistance_ohm) * share;
@@ -147,7 +140,7 @@ fn into_a_matched_line() {
                 duty,
                 ..net(&name, driver.clone(), 40e6, path)
             };
-            let spectrum = engine(&net);
+            let spectrum = harmonics(&net, 0.0, TOP_HZ);
             let current_a = |share: f64| {
                 let own_ohm = driver.low_resistance_ohm
                     + (driver.high_resistance_ohm - driver.low_resistance_ohm) * share;
@@ -210,7 +203,8 @@ fn equal_states_make_no_even_harmonics() {
                 for (name, path) in &paths {
                     let name = format!("{how} state, {name}, {clock_hz:e} Hz, {edge:?}");
                     let driver = two_state(high_ohm, 7.0, [0.9e-9; 2], edge);
-                    let spectrum = engine(&net(&name, driver, clock_hz, path.clone()));
+                    let spectrum =
+                        harmonics(&net(&name, driver, clock_hz, path.clone()), 0.0, TOP_HZ);
                     let below_db = even_below_fundamental_db(&spectrum);
                     assert!(below_db > EVEN_BELOW_DB, "{name}: {below_db:.1} dB");
                 }

@@ -14,12 +14,13 @@ const IDLE_V: f64 = 0.36;
 /// The clamps of one input.
 #[derive(Debug, Clone, Copy, Default)]
 pub struct Clamps {
-    low: Option<Junction>,
+    /// Each with its rail.
+    low: Option<(Junction, f64)>,
     high: Option<(Junction, f64)>,
 }
 
 /// A junction with its series resistance.
-#[derive(Debug, Clone, Copy)]
+#[derive(Debug, Clone, Copy, PartialEq)]
 struct Junction {
     knee_v: f64,
     saturation_a: f64,
@@ -32,7 +33,7 @@ impl Clamps {
     /// The clamps of a receiver part.
     pub fn of(part: &ReceiverPart) -> Self {
         Self {
-            low: part.low_clamp.map(Junction::new),
+            low: part.low_clamp.map(|clamp| (Junction::new(clamp), 0.0)),
             high: part
                 .high_clamp
                 .map(|HighClamp { clamp, supply_v }| (Junction::new(clamp), supply_v)),
@@ -51,7 +52,8 @@ impl Clamps {
 
     /// Current in the clamp to 0 V, out of the rail into the input.
     pub fn low_a(&self, input_v: f64) -> Option<f64> {
-        self.low.map(|junction| junction.current(-input_v).0)
+        self.low
+            .map(|(junction, rail_v)| junction.current(rail_v - input_v).0)
     }
 
     /// Current in the clamp to the supply, out of the input into the rail.
@@ -60,27 +62,46 @@ impl Clamps {
             .map(|(junction, supply_v)| junction.current(input_v - supply_v).0)
     }
 
+    /// The same clamps with voltages counted from `middle_v`.
+    pub(super) fn from_middle(&self, middle_v: f64) -> Self {
+        let shifted = |(junction, rail_v)| (junction, rail_v - middle_v);
+        Self {
+            low: self.low.map(shifted),
+            high: self.high.map(shifted),
+        }
+    }
+
+    /// Whether a voltage and its negative draw a current and its negative.
+    pub(super) fn is_odd(&self) -> bool {
+        match (self.low, self.high) {
+            (None, None) => true,
+            (Some((low, low_v)), Some((high, high_v))) => {
+                low == high && (low_v + high_v).abs() <= 1e-9 * (high_v - low_v).abs()
+            }
+            _ => false,
+        }
+    }
+
     /// The clamps as seen through a resistance in front of each: the same junctions with more series
     /// resistance. `None` where both can conduct at one voltage, since the resistance is then shared.
     pub(super) fn behind(&self, resistance_ohm: f64) -> Option<Self> {
-        if let (Some(low), Some((high, supply_v))) = (&self.low, &self.high)
-            && supply_v + high.wakes_v() + low.wakes_v() <= 0.0
+        if let (Some((low, ground_v)), Some((high, supply_v))) = (&self.low, &self.high)
+            && supply_v + high.wakes_v() <= ground_v - low.wakes_v()
         {
             return None;
         }
+        let fed = |(junction, rail_v): (Junction, f64)| (junction.behind(resistance_ohm), rail_v);
         Some(Self {
-            low: self.low.map(|junction| junction.behind(resistance_ohm)),
-            high: self
-                .high
-                .map(|(junction, supply_v)| (junction.behind(resistance_ohm), supply_v)),
+            low: self.low.map(fed),
+            high: self.high.map(fed),
         })
     }
 
     /// Current into both clamps, and its slope over voltage.
     pub(super) fn load(&self, input_v: f64) -> (f64, f64) {
-        let (low_a, low_s) = self
-            .low
-            .map_or((0.0, 0.0), |junction| junction.current(-input_v));
+        let (low_a, low_s) = self.low.map_or((0.0, 0.0), |(junction, ground_v)| {
+            junction.current(ground_v - input_v)
+        });
         let (high_a, high_s) = self.high.map_or((0.0, 0.0), |(junction, supply_v)| {
             junction.current(input_v - supply_v)
         });
@@ -131,8 +152,8 @@ impl Junction {
 
 /// The solution w of w + ln w = x for real x.
 ///
-/// One good guess and two steps of the third-order iteration of Fritsch, Shafer & Crowley,
-/// Comm. ACM 16 (1973), which is exact to rounding.
+/// One good guess and one or two steps of the fourth-order iteration of Fritsch, Shafer & Crowley,
+/// Comm. ACM 16 (1973), until it is exact to rounding.
 fn wright_omega(x: f64) -> f64 {
     let mut w = if x < -2.0 {
         x.exp()
@@ -146,12 +167,13 @@ fn wright_omega(x: f64) -> f64 {
     }
     for _ in 0..3 {
         let residual = x - w - w.ln();
-        if residual.abs() < 1e-14 * (1.0 + x.abs()) {
-            break;
-        }
         let next = 1.0 + w;
         let q = 2.0 * next * (next + 2.0 / 3.0 * residual);
         w *= 1.0 + residual / next * (q - residual) / (q - 2.0 * residual);
+        // What is left is below a seventieth of its fourth power.
+        if residual.abs() < 1e-3 {
+            break;
+        }
     }
     w
 }
@@ -185,10 +207,13 @@ mod tests {
     #[test]
     fn behind_a_resistance_the_currents_balance() {
         let clamps = Clamps {
-            low: Some(Junction::new(Clamp {
-                knee_v: 0.7,
-                resistance_ohm: 10.0,
-            })),
+            low: Some((
+                Junction::new(Clamp {
+                    knee_v: 0.7,
+                    resistance_ohm: 10.0,
+                }),
+                0.0,
+            )),
             high: Some((
                 Junction::new(Clamp {
                     knee_v: 0.5,
@@ -212,10 +237,13 @@ mod tests {
     #[test]
     fn slope_is_the_derivative() {
         let clamps = Clamps {
-            low: Some(Junction::new(Clamp {
-                knee_v: 0.7,
-                resistance_ohm: 10.0,
-            })),
+            low: Some((
+                Junction::new(Clamp {
+                    knee_v: 0.7,
+                    resistance_ohm: 10.0,
+                }),
+                0.0,
+            )),
             high: Some((
                 Junction::new(Clamp {
                     knee_v: 0.5,

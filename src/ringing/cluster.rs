@@ -105,6 +105,25 @@ impl Cluster {
         voltage_v: &mut [f64],
     ) {
         let count = self.nodes.len();
+        if let (&[node], &[own_ohm]) = (&self.nodes[..], &self.resistance_ohm[..]) {
+            // Most are a single node.
+            let open_v = own_ohm * injected_a[node];
+            match &self.ports {
+                Ports::None => {
+                    voltage_v[node] = open_v;
+                    return;
+                }
+                Ports::OneClamped { behind_cluster, .. } => {
+                    voltage_v[node] = open_v - own_ohm * behind_cluster.load(open_v).0;
+                    return;
+                }
+                Ports::OneDriver { .. } => {
+                    voltage_v[node] = open_v / (1.0 + own_ohm * driver_change_s);
+                    return;
+                }
+                Ports::Several(_) => {}
+            }
+        }
         for (open_v, row) in self
             .open_v
             .iter_mut()

@@ -49,26 +49,35 @@ impl Companion {
     /// Least resistance of a branch: a dead short to a rail has to have some.
     const LEAST_OHM: f64 = 1e-6;
 
-    /// A companion at rest, its capacitance charged to `start_v`.
-    pub(super) fn new(branch: &Branch, step_s: f64, start_v: f64) -> Self {
+    /// A companion at rest, voltages counted from `middle_v`.
+    pub(super) fn new(branch: &Branch, step_s: f64, middle_v: f64) -> Self {
         let inductor_ohm = 2.0 * branch.inductance_h / step_s;
         let capacitor_ohm = branch.capacitance_f.map_or(0.0, |c| step_s / (2.0 * c));
         let total_ohm = branch.resistance_ohm + inductor_ohm + capacitor_ohm;
-        let capacitor_v = match (branch.capacitance_f, branch.to) {
-            (Some(_), BranchEnd::RailV(rail_v)) => start_v - rail_v,
-            _ => 0.0,
+        let to = match (branch.capacitance_f, branch.to) {
+            (_, BranchEnd::Node(node)) => BranchEnd::Node(node),
+            (None, BranchEnd::RailV(rail_v)) => BranchEnd::RailV(rail_v - middle_v),
+            // A capacitance is charged to whatever lies between its rail and the middle.
+            (Some(_), BranchEnd::RailV(_)) => BranchEnd::RailV(0.0),
         };
         Self {
             from: branch.from,
-            to: branch.to,
+            to,
             conductance_s: 1.0 / total_ohm.max(Self::LEAST_OHM),
             inductor_ohm,
             capacitor_ohm,
             current_a: 0.0,
             inductor_v: 0.0,
-            capacitor_v,
+            capacitor_v: 0.0,
             past_v: 0.0,
         }
+    }
+
+    /// Shows every value that has a say in what is still to come.
+    pub(super) fn visit(&mut self, visit: &mut impl FnMut(&mut f64)) {
+        visit(&mut self.current_a);
+        visit(&mut self.inductor_v);
+        visit(&mut self.capacitor_v);
     }
 
     /// Injects the current of its past.

@@ -1,7 +1,7 @@
 //! Causal filters: what loss makes of a wave, as a sum of relaxations.
 
 use super::algebra::least_squares;
-use ndarray::Array2;
+use ndarray::{Array1, Array2};
 use num_complex::Complex64;
 
 /// H(s) = direct + sum of residue / (1 + s / pole) with real poles.
@@ -18,21 +18,25 @@ pub(super) struct Sample {
     pub(super) weight: f64,
 }
 
-impl Relaxations {
-    /// For each function, given by its values at the samples, the sum with the given poles that comes nearest to it
-    /// in the sense of least squares, and how far off it is (root of the weighted sum of squares). With `at_zero`
-    /// all have that value at zero.
-    pub(super) fn fit(
-        poles: &[f64],
-        samples: &[Sample],
-        functions: &[Vec<Complex64>],
-        at_zero: Option<f64>,
-    ) -> Vec<(Self, f64)> {
-        const EXACTLY: f64 = 1e3;
+/// Relaxations of given poles, to be fitted to functions given by their values at some samples.
+pub(super) struct Basis {
+    poles: Vec<f64>,
+    weights: Vec<f64>,
+    at_zero: Option<f64>,
+    /// A column for the direct part and each relaxation; rows: real parts, imaginary parts, the value at zero.
+    matrix: Array2<f64>,
+    /// The least-squares solution for each row of the matrix.
+    inverse: Array2<f64>,
+}
+
+impl Basis {
+    /// What counts as much as a value that must be met.
+    const EXACTLY: f64 = 1e3;
+
+    /// With `at_zero` all fits have that value at zero.
+    pub(super) fn new(poles: Vec<f64>, samples: &[Sample], at_zero: Option<f64>) -> Self {
         let count = samples.len();
-        // Rows: real parts, imaginary parts, the value at zero.
         let mut matrix = Array2::zeros((2 * count + 1, poles.len() + 1));
-        let mut right = Array2::zeros((2 * count + 1, functions.len()));
         for (row, Sample { omega, weight }) in samples.iter().enumerate() {
             matrix[[row, 0]] = *weight;
             for (column, pole) in poles.iter().enumerate() {
@@ -40,25 +44,55 @@ impl Relaxations {
                 matrix[[row, column + 1]] = term.re;
                 matrix[[count + row, column + 1]] = term.im;
             }
-            for (column, values) in functions.iter().enumerate() {
-                right[[row, column]] = weight * values[row].re;
-                right[[count + row, column]] = weight * values[row].im;
-            }
         }
-        if let Some(at_zero) = at_zero {
-            matrix.row_mut(2 * count).fill(EXACTLY);
-            right.row_mut(2 * count).fill(EXACTLY * at_zero);
+        if at_zero.is_some() {
+            matrix.row_mut(2 * count).fill(Self::EXACTLY);
         }
-        let (solution, errors) = least_squares(matrix, right);
-        let sums = solution.columns().into_iter().map(|column| Self {
-            direct: column[0],
-            terms: poles
-                .iter()
-                .copied()
-                .zip(column.iter().skip(1).copied())
-                .collect(),
-        });
-        sums.zip(errors).collect()
+        let (inverse, _) = least_squares(matrix.clone(), Array2::eye(2 * count + 1));
+        Self {
+            poles,
+            weights: samples.iter().map(|sample| sample.weight).collect(),
+            at_zero,
+            matrix,
+            inverse,
+        }
+    }
+
+    /// The sum that comes nearest to a function in the sense of least squares.
+    pub(super) fn fit(&self, values: &[Complex64]) -> Relaxations {
+        let solution = self.inverse.dot(&self.right(values, true));
+        let residues = solution.iter().skip(1).copied();
+        Relaxations {
+            direct: solution[0],
+            terms: self.poles.iter().copied().zip(residues).collect(),
+        }
+    }
+
+    /// What the best fit leaves of a function, weighted; `held` is whether it is held at zero, else it is zero there.
+    pub(super) fn left(&self, values: &[Complex64], held: bool) -> Vec<f64> {
+        let right = self.right(values, held);
+        let fitted = self.matrix.dot(&self.inverse.dot(&right));
+        (right - fitted).to_vec()
+    }
+
+    fn right(&self, values: &[Complex64], held: bool) -> Array1<f64> {
+        let weighted = || values.iter().zip(&self.weights);
+        let at_zero = self.at_zero.filter(|_| held).unwrap_or(0.0);
+        weighted()
+            .map(|(value, weight)| weight * value.re)
+            .chain(weighted().map(|(value, weight)| weight * value.im))
+            .chain([Self::EXACTLY * at_zero])
+            .collect()
+    }
+}
+
+impl Relaxations {
+    /// None at all: the same at every frequency.
+    pub(super) fn constant(direct: f64) -> Self {
+        Self {
+            direct,
+            terms: Vec::new(),
+        }
     }
 
     /// Its value at j omega.
@@ -72,79 +106,96 @@ impl Relaxations {
     }
 }
 
-/// Relaxations are marched so many at a time: what a processor does at once.
-const LANES: usize = 4;
+/// A value for each of a line's two ends, which a processor works out at once.
+pub(super) type Pair = [f64; 2];
 
-/// A sum of relaxations marched step by step, its input taken as straight between steps.
+/// The same value for both ends. What both ends share is kept twice all the same: a processor then reads it whole, and
+/// does not wait for a neighbour in memory that has just been written.
+pub(super) fn both(value: f64) -> Pair {
+    [value; 2]
+}
+
+/// Both ends' values from a figure of each end.
+pub(super) fn pair(of_end: impl FnMut(usize) -> f64) -> Pair {
+    [0, 1].map(of_end)
+}
+
+/// A sum of relaxations marched step by step at both ends of a line, its inputs taken as straight between steps.
 #[derive(Debug, Clone)]
 pub(super) struct Filter {
     /// Share of the present input in the present output.
-    direct: f64,
-    blocks: Vec<Block>,
-    past: f64,
+    direct: Pair,
+    terms: Vec<Term>,
+    /// Sum of the terms' gains.
+    gain: Pair,
+    past: Pair,
 }
 
-/// Relaxations that are marched together.
-#[derive(Debug, Clone, Default)]
-struct Block {
-    decay: [f64; LANES],
-    gain: [f64; LANES],
-    /// What each relaxation's past will leave in the next output.
-    state: [f64; LANES],
+/// One relaxation on the march.
+#[derive(Debug, Clone)]
+struct Term {
+    decay: Pair,
+    gain: Pair,
+    /// What its past will leave in the next output.
+    state: Pair,
 }
 
 impl Filter {
-    /// A filter that has always had the input `start`.
-    pub(super) fn new(relaxations: &Relaxations, step_s: f64, start: f64) -> Self {
-        let count = relaxations.terms.len().div_ceil(LANES);
-        let mut filter = Self {
-            direct: relaxations.direct,
-            blocks: vec![Block::default(); count],
-            past: 0.0,
-        };
-        for (number, &(pole, residue)) in relaxations.terms.iter().enumerate() {
-            let (block, lane) = (&mut filter.blocks[number / LANES], number % LANES);
-            let decay = (-pole * step_s).exp();
-            let mean = -(-pole * step_s).exp_m1() / (pole * step_s);
-            // Of an input that is straight between steps: the new end's and the old end's share.
-            let (from_now, from_before) = (residue * (1.0 - mean), residue * (mean - decay));
-            filter.direct += from_now;
-            block.decay[lane] = decay;
-            block.gain[lane] = decay * from_now + from_before;
-            block.state[lane] = (residue - from_now) * start;
-            filter.past += (residue - from_now) * start;
+    /// A filter at rest.
+    pub(super) fn new(relaxations: &Relaxations, step_s: f64) -> Self {
+        let mut direct = relaxations.direct;
+        let terms: Vec<Term> = relaxations
+            .terms
+            .iter()
+            .map(|&(pole, residue)| {
+                let decay = (-pole * step_s).exp();
+                let mean = -(-pole * step_s).exp_m1() / (pole * step_s);
+                // Of an input that is straight between steps: the new end's and the old end's share.
+                let (from_now, from_before) = (residue * (1.0 - mean), residue * (mean - decay));
+                direct += from_now;
+                Term {
+                    decay: both(decay),
+                    gain: both(decay * from_now + from_before),
+                    state: [0.0; 2],
+                }
+            })
+            .collect();
+        Self {
+            direct: both(direct),
+            gain: both(terms.iter().map(|term| term.gain[0]).sum()),
+            terms,
+            past: [0.0; 2],
         }
-        filter
     }
 
     /// Share of the present input in the present output.
-    pub(super) fn direct(&self) -> f64 {
+    pub(super) fn direct(&self) -> Pair {
         self.direct
     }
 
     /// What the past leaves in the present output.
-    pub(super) fn past(&self) -> f64 {
+    pub(super) fn past(&self) -> Pair {
         self.past
     }
 
     /// Shows every value that has a say in what is still to come out.
     pub(super) fn visit(&mut self, visit: &mut impl FnMut(&mut f64)) {
-        for block in &mut self.blocks {
-            block.state.iter_mut().for_each(&mut *visit);
+        for term in &mut self.terms {
+            term.state.iter_mut().for_each(&mut *visit);
         }
-        visit(&mut self.past);
+        self.past.iter_mut().for_each(visit);
     }
 
-    /// Takes the present input and goes on to the next step.
-    pub(super) fn take(&mut self, input: f64) {
-        let mut sums = [0.0; LANES];
-        for Block { decay, gain, state } in &mut self.blocks {
-            for lane in 0..LANES {
-                state[lane] = decay[lane] * state[lane] + gain[lane] * input;
-                sums[lane] += state[lane];
-            }
+    /// Takes the present inputs and goes on to the next step.
+    pub(super) fn take(&mut self, input: Pair) {
+        // The sum of what fades does not wait for the input, which comes late in a step.
+        let mut faded = [0.0; 2];
+        for Term { decay, gain, state } in &mut self.terms {
+            let fading = pair(|end| decay[end] * state[end]);
+            faded = pair(|end| faded[end] + fading[end]);
+            *state = pair(|end| fading[end] + gain[end] * input[end]);
         }
-        self.past = sums.iter().sum();
+        self.past = pair(|end| faded[end] + self.gain[end] * input[end]);
     }
 }
 
@@ -164,13 +215,14 @@ mod tests {
                 weight: 1.0,
             })
             .collect();
-        let values = samples
+        let values: Vec<Complex64> = samples
             .iter()
             .map(|sample| truth.at(sample.omega))
             .collect();
-        let (found, error) =
-            Relaxations::fit(&[1e7, 1e8, 1e9], &samples, &[values], Some(1.0)).remove(0);
-        assert!(error < 1e-9);
+        let basis = Basis::new(vec![1e7, 1e8, 1e9], &samples, Some(1.0));
+        let found = basis.fit(&values);
+        let left = basis.left(&values, true);
+        assert!(left.iter().all(|left| left.abs() < 1e-9));
         assert!((found.direct - truth.direct).abs() < 1e-9);
         for (a, b) in found.terms.iter().zip(&truth.terms) {
             assert!((a.1 - b.1).abs() < 1e-9);
@@ -185,15 +237,18 @@ mod tests {
             terms: vec![(pole, 1.0)],
         };
         let step_s = 1e-10;
-        let mut filter = Filter::new(&relaxations, step_s, 0.0);
+        let mut filter = Filter::new(&relaxations, step_s);
         for step in 0..200 {
             let time_s = f64::from(step) * step_s;
+            let input = [time_s, -2.0 * time_s];
             let past = filter.past();
-            let output = past + filter.direct() * time_s;
-            filter.take(time_s);
+            let output = pair(|end| past[end] + filter.direct()[end] * input[end]);
+            filter.take(input);
             // response of 1 / (1 + s / p) to t: t - (1 - e^{-pt}) / p
             let exact = time_s - (1.0 - (-pole * time_s).exp()) / pole;
-            assert!((output - exact).abs() < 1e-12 * time_s + 1e-24);
+            for (output, exact) in output.into_iter().zip([exact, -2.0 * exact]) {
+                assert!((output - exact).abs() < 1e-12 * time_s + 1e-24);
+            }
         }
     }
 }

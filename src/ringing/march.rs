@@ -2,10 +2,11 @@
 
 use super::cluster::{Cluster, Load};
 use super::companion::{Companion, pi_section};
-use super::extrapolate::extrapolated;
+use super::extrapolate::Extrapolation;
+use super::model::{Model, line_models};
 use super::network::{Branch, BranchEnd, DRIVER_NODE, Network};
 use super::steps::Pace;
-use super::travelling::{Model, TravellingLine};
+use super::travelling::TravellingLine;
 use ndarray::Array2;
 
 #[cfg(test)]
@@ -13,15 +14,11 @@ mod energy_tests;
 
 /// Largest share of the swing by which the settled waveform may still be off.
 const SETTLED: f64 = 1e-6;
-/// Losses are fitted from here on: what lies lower is not radiated, and its slow relaxations would keep a net long
-/// from its settled state.
-const LOWEST_LOSSY_HZ: f64 = 20e6;
-/// Where a net has not settled after this many states, the next is extrapolated from them.
-const STATES: usize = 6;
-/// Extrapolations before the states are taken twice as far apart.
-const JUMPS_A_STRIDE: usize = 3;
-/// How changes are taken to shrink where only one is known.
-const USUAL_RATIO: f64 = 0.9;
+/// How much farther off than estimated the waveform may be.
+const SAFETY: f64 = 2.0;
+/// Times an extrapolation may begin anew before the states are taken twice as far apart, and how often they are.
+const RESTARTS_A_STRIDE: usize = 2;
+const MOST_DOUBLINGS: usize = 16;
 /// Most steps of one march, some tenths of a second's worth.
 const MOST_STEPS: usize = 10_000_000;
 
@@ -74,9 +71,9 @@ pub enum Taken {
 pub struct MarchReport {
     /// Steps in one period.
     pub steps_per_period: usize,
-    /// Steps of them that were marched; the others are time at rest.
+    /// Steps of them that were marched; the others are time at rest, or the mirror image of those marched.
     pub marched_steps: usize,
-    /// Periods marched until one repeated.
+    /// Times these steps were marched until they repeated.
     pub periods: usize,
     /// How far the last period may still be from the settled one, as a share of the swing.
     pub residual: f64,
@@ -90,9 +87,18 @@ pub struct MarchReport {
 /// A net that does not settle within the longest march is returned as it stands, with the residual
 /// in its report.
 pub fn settle(network: &Network, top_frequency_hz: f64) -> Settled {
+    settle_lines(
+        network,
+        &line_models(network, top_frequency_hz),
+        top_frequency_hz,
+    )
+}
+
+/// The same with lines whose models are known.
+pub fn settle_lines(network: &Network, models: &[Model], top_frequency_hz: f64) -> Settled {
     let mut pace = Pace::first(network, top_frequency_hz);
     loop {
-        let mut march = March::new(network, pace, top_frequency_hz);
+        let mut march = March::new(network, models, pace, top_frequency_hz);
         let report = march.settle();
         if pace.is_whole() || march.restlessness() < SETTLED * network.source.swing_v() {
             return march.into_settled(report);
@@ -101,11 +107,15 @@ pub fn settle(network: &Network, top_frequency_hz: f64) -> Settled {
     }
 }
 
-/// The state of a march.
+/// The state of a march. Its voltages are counted from the middle of the driver's levels, so that a net that behaves
+/// alike up and down has half a period that is the other with all signs turned.
 struct March<'a> {
     network: &'a Network,
     pace: Pace,
-    /// The driver's state at each step of the period: conductance and short-circuit current.
+    middle_v: f64,
+    /// Whether one half of the period mirrors the other, which is then not marched.
+    mirrored: bool,
+    /// The driver's state at each step of a round: conductance and short-circuit current.
     drive: Vec<(f64, f64)>,
     base_conductance_s: f64,
     lines: Vec<LineState>,
@@ -131,18 +141,18 @@ enum LineState {
 }
 
 impl<'a> March<'a> {
-    fn new(network: &'a Network, pace: Pace, top_frequency_hz: f64) -> Self {
-        let (step_s, steps) = (pace.step_s, pace.marched());
+    fn new(network: &'a Network, models: &[Model], pace: Pace, top_frequency_hz: f64) -> Self {
         let source = &network.source;
-        let low_v = source.low_v();
+        let middle_v = source.low_v() + 0.5 * source.swing_v();
+        let mirrored = is_mirrored(network, &pace, middle_v);
+        let step_s = pace.step_s;
+        let steps = pace.marched() / if mirrored { 2 } else { 1 };
         let mut branches: Vec<Branch> = network.branches.clone();
         let mut lines = Vec::with_capacity(network.spans.len());
-        let lowest_hz = (1.0 / network.period_s).max(LOWEST_LOSSY_HZ);
-        for span in &network.spans {
+        for (span, model) in network.spans.iter().zip(models) {
             let (near, far) = (span.near, span.far);
-            let model = Model::of(&span.line, lowest_hz, top_frequency_hz);
             lines.push(
-                match TravellingLine::new([near, far], &model, step_s, steps, low_v) {
+                match TravellingLine::new([near, far], model, step_s, steps) {
                     Some(line) => LineState::Waves(Box::new(line)),
                     None => {
                         let branch = branches.len();
@@ -162,40 +172,45 @@ impl<'a> March<'a> {
         }
         let branches: Vec<Companion> = branches
             .iter()
-            .map(|branch| Companion::new(branch, step_s, low_v))
+            .map(|branch| Companion::new(branch, step_s, middle_v))
             .collect();
         let drive = (0..steps)
             .map(|step| {
                 let high_share = source.high_share(pace.time_s(step));
                 let conductance_s = source.conductance_s(high_share);
-                (conductance_s, conductance_s * source.voltage_v(high_share))
+                (
+                    conductance_s,
+                    conductance_s * (source.voltage_v(high_share) - middle_v),
+                )
             })
             .collect();
         let base_conductance_s = source.conductance_s(0.0);
-        let clusters = clusters(network, &lines, &branches, base_conductance_s);
+        let clusters = clusters(network, &lines, &branches, base_conductance_s, middle_v);
         Self {
             network,
             pace,
+            middle_v,
+            mirrored,
             drive,
             base_conductance_s,
             lines,
             branches,
             clusters,
             injected_a: vec![0.0; network.node_count],
-            voltage_v: vec![low_v; network.node_count],
+            voltage_v: vec![0.0; network.node_count],
             waveform: SettledWaveform {
                 pace,
-                driver_v: vec![low_v; steps],
+                driver_v: vec![0.0; steps],
                 driver_a: vec![0.0; steps],
-                receivers_v: vec![vec![low_v; steps]; network.inputs.len()],
+                receivers_v: vec![vec![0.0; steps]; network.inputs.len()],
             },
         }
     }
 
-    /// Marches until a period repeats.
+    /// Marches until a round repeats.
     fn settle(&mut self) -> MarchReport {
         let swing_v = self.network.source.swing_v();
-        let marched_steps = self.pace.marched();
+        let marched_steps = self.drive.len();
         let most_periods = (MOST_STEPS / marched_steps).max(4);
         let mut report = MarchReport {
             steps_per_period: self.pace.total(),
@@ -204,46 +219,39 @@ impl<'a> March<'a> {
             residual: f64::INFINITY,
             settled: false,
         };
-        // What is on its way along a line was sent this many periods ago at most.
+        // What is on its way along a line was sent this many rounds ago at most.
         let longest_s = self
             .network
             .spans
             .iter()
             .map(|span| span.line.delay_s)
             .fold(0.0, f64::max);
-        let memory = (longest_s / self.network.period_s).ceil().max(1.0) as usize;
-        // States a stride of changes apart. Slow relaxations show only over many periods, so that the stride
-        // doubles where a few jumps did not settle the net.
-        let mut states = vec![self.state()];
-        let (mut jumps, mut since_state, mut since_jump) = (0, 0, 0);
-        let mut last_change = None;
-        while report.periods < most_periods && !report.settled {
-            let change = (0..memory).fold(0.0, |most, _| self.one_period().max(most)) / swing_v;
-            report.periods += memory;
-            (since_state, since_jump) = (since_state + 1, since_jump + 1);
-            // The first change after a jump is the jump itself.
-            if since_jump > 1 {
-                // Changes that shrink by a constant ratio leave this sum of all that are still to come.
-                let ratio = last_change
-                    .map_or(USUAL_RATIO, |last| change / last)
-                    .min(1.0 - 1e-9);
-                report.residual = change.max(change * ratio / (1.0 - ratio)).min(1.0);
-                // A number that is none is not settled.
-                report.settled = report.residual < SETTLED && self.is_sound();
-                last_change = Some(change);
+        let round_s = if self.mirrored {
+            self.network.period_s / 2.0
+        } else {
+            self.network.period_s
+        };
+        let memory = (longest_s / round_s).ceil().max(1.0) as usize;
+        let mut extrapolation = Extrapolation::default();
+        let mut start = self.state();
+        while report.periods < most_periods {
+            // Slow relaxations show only over many rounds.
+            let stride = memory << (extrapolation.restarts / RESTARTS_A_STRIDE).min(MOST_DOUBLINGS);
+            for _ in 0..stride {
+                self.one_round();
             }
-            if since_state == 1 << (jumps / JUMPS_A_STRIDE) {
-                since_state = 0;
-                states.push(self.state());
+            report.periods += stride;
+            let (next, farthest_v) = extrapolation.next(&start, self.state());
+            report.residual = (SAFETY * farthest_v / swing_v).min(1.0);
+            // A number that is none is not settled.
+            report.settled = report.residual < SETTLED && self.is_sound();
+            if report.settled {
+                break;
             }
-            if states.len() == STATES && !report.settled {
-                if let Some(state) = extrapolated(&states) {
-                    self.set_state(&state);
-                    last_change = None;
-                }
-                (since_jump, jumps) = (0, jumps + 1);
-                states = vec![self.state()];
+            if next.iter().all(|value| value.is_finite()) {
+                self.set_state(&next);
             }
+            start = self.state();
         }
         report
     }
@@ -267,9 +275,7 @@ impl<'a> March<'a> {
             }
         }
         for branch in &mut self.branches {
-            visit(&mut branch.current_a);
-            visit(&mut branch.inductor_v);
-            visit(&mut branch.capacitor_v);
+            branch.visit(visit);
         }
     }
 
@@ -287,7 +293,7 @@ impl<'a> March<'a> {
             };
             late(0, high).max(late(high, all))
         };
-        let waves = self.lines.iter().flat_map(LineState::last_period);
+        let waves = self.lines.iter().flat_map(LineState::last_round);
         let waveform = &self.waveform;
         let voltages = waveform.receivers_v.iter().chain([&waveform.driver_v]);
         voltages
@@ -296,12 +302,22 @@ impl<'a> March<'a> {
             .fold(0.0, f64::max)
     }
 
-    /// Marches one period; returns the largest change of any wave or voltage since the last one.
-    fn one_period(&mut self) -> f64 {
-        (0..self.drive.len()).fold(0.0, |largest, step| self.one_step(step).max(largest))
+    /// Marches one round.
+    fn one_round(&mut self) {
+        if self.mirrored {
+            self.negate();
+        }
+        for step in 0..self.drive.len() {
+            self.one_step(step);
+        }
     }
 
-    fn one_step(&mut self, step: usize) -> f64 {
+    /// Turns the signs of all that has a say in what is still to come.
+    fn negate(&mut self) {
+        self.visit(&mut |value| *value = -*value);
+    }
+
+    fn one_step(&mut self, step: usize) {
         self.injected_a.fill(0.0);
         for line in &mut self.lines {
             if let LineState::Waves(line) = line {
@@ -320,12 +336,10 @@ impl<'a> March<'a> {
         for branch in &mut self.branches {
             branch.advance(&self.voltage_v);
         }
-        let mut largest: f64 = 0.0;
         for line in &mut self.lines {
-            largest = largest.max(line.leave(step, &self.voltage_v, &self.branches));
+            line.leave(step, &self.voltage_v, &self.branches);
         }
         let driver_v = self.voltage_v[DRIVER_NODE];
-        largest = largest.max((driver_v - self.waveform.driver_v[step]).abs());
         self.waveform.driver_v[step] = driver_v;
         self.waveform.driver_a[step] = short_circuit_a - conductance_s * driver_v;
         for (record, input) in self
@@ -334,26 +348,76 @@ impl<'a> March<'a> {
             .iter_mut()
             .zip(&self.network.inputs)
         {
-            let voltage_v = self.voltage_v[input.node];
-            largest = largest.max((voltage_v - record[step]).abs());
-            record[step] = voltage_v;
+            record[step] = self.voltage_v[input.node];
         }
-        largest
     }
 
     fn into_settled(self, report: MarchReport) -> Settled {
-        let waves = self.lines.into_iter().map(LineState::into_record).collect();
+        let (mirrored, middle_v) = (self.mirrored, self.middle_v);
+        let whole = |round: Vec<f64>, offset: f64| whole_period(round, mirrored, offset);
+        let waveform = self.waveform;
+        let waves = self.lines.into_iter().map(|line| {
+            let [outward_v, inward_v] = line.last_round();
+            WaveRecord {
+                outward_v: whole(outward_v, middle_v / 2.0),
+                inward_v: whole(inward_v, middle_v / 2.0),
+                taken: line.taken(),
+            }
+        });
         Settled {
-            waveform: self.waveform,
-            waves,
+            waves: waves.collect(),
+            waveform: SettledWaveform {
+                pace: waveform.pace,
+                driver_v: whole(waveform.driver_v, middle_v),
+                driver_a: whole(waveform.driver_a, 0.0),
+                receivers_v: waveform
+                    .receivers_v
+                    .into_iter()
+                    .map(|record| whole(record, middle_v))
+                    .collect(),
+            },
             report,
         }
     }
 }
 
+/// Whether a net that is marched step by step behaves alike up and down, seen from the middle of the driver's levels.
+fn is_mirrored(network: &Network, pace: &Pace, middle_v: f64) -> bool {
+    let clamps = network.inputs.iter().map(|input| input.clamps);
+    let rails = network
+        .branches
+        .iter()
+        .filter_map(|branch| match branch.to {
+            // Direct current does not pass a capacitance.
+            BranchEnd::RailV(rail_v) if branch.capacitance_f.is_none() => Some(rail_v),
+            _ => None,
+        });
+    pace.is_whole()
+        && network.source.is_mirrored(network.period_s)
+        && clamps
+            .into_iter()
+            .all(|clamps| clamps.from_middle(middle_v).is_odd())
+        && rails.into_iter().all(|rail_v| rail_v == middle_v)
+}
+
+/// A whole period from what was marched of it, with an offset.
+fn whole_period(mut round: Vec<f64>, mirrored: bool, offset: f64) -> Vec<f64> {
+    if mirrored {
+        round.extend_from_within(..);
+        let half = round.len() / 2;
+        for value in &mut round[half..] {
+            *value = -*value;
+        }
+    }
+    for value in &mut round {
+        *value += offset;
+    }
+    round
+}
+
 impl LineState {
-    /// Sends the waves that leave now; returns the largest change since one period ago.
-    fn leave(&mut self, step: usize, voltage_v: &[f64], branches: &[Companion]) -> f64 {
+    /// Sends the waves that leave now.
+    fn leave(&mut self, step: usize, voltage_v: &[f64], branches: &[Companion]) {
         match self {
             Self::Waves(line) => line.leave(voltage_v),
             Self::Lumped {
@@ -365,35 +429,24 @@ impl LineState {
             } => {
                 let middle_v = (voltage_v[*near] + voltage_v[*far]) / 2.0;
                 let across_v = *impedance_ohm * branches[*branch].current_a;
-                let new = [(middle_v + across_v) / 2.0, (middle_v - across_v) / 2.0];
-                let mut largest: f64 = 0.0;
-                for (record, new) in record.iter_mut().zip(new) {
-                    largest = largest.max((new - record[step]).abs());
-                    record[step] = new;
-                }
-                largest
+                record[0][step] = (middle_v + across_v) / 2.0;
+                record[1][step] = (middle_v - across_v) / 2.0;
             }
         }
     }
 
-    /// The outward and the inward wave of the last period.
-    fn last_period(&self) -> [Vec<f64>; 2] {
+    /// The outward and the inward wave of the last round.
+    fn last_round(&self) -> [Vec<f64>; 2] {
         match self {
-            Self::Waves(line) => line.last_period(),
+            Self::Waves(line) => line.last_round(),
             Self::Lumped { record, .. } => record.clone(),
         }
     }
 
-    fn into_record(self) -> WaveRecord {
-        let [outward_v, inward_v] = self.last_period();
-        let taken = match self {
+    fn taken(&self) -> Taken {
+        match self {
             Self::Waves(_) => Taken::AtStart,
             Self::Lumped { .. } => Taken::InMiddle,
-        };
-        WaveRecord {
-            outward_v,
-            inward_v,
-            taken,
         }
     }
 }
@@ -404,6 +457,7 @@ fn clusters(
     lines: &[LineState],
     branches: &[Companion],
     driver_s: f64,
+    middle_v: f64,
 ) -> Vec<Cluster> {
     let count = network.node_count;
     let mut conductance = Array2::<f64>::zeros((count, count));
@@ -444,7 +498,10 @@ fn clusters(
                 .inputs
                 .iter()
                 .filter(|input| input.clamps.any() && nodes.contains(&input.node))
-                .map(|input| (input.node, Load::Clamps(input.clamps)))
+                .map(|input| {
+                    let clamps = input.clamps.from_middle(middle_v);
+                    (input.node, Load::Clamps(clamps))
+                })
                 .collect();
             if nodes.contains(&DRIVER_NODE) && !network.source.is_steady() {
                 loads.push((DRIVER_NODE, Load::DriverChange));

@@ -14,6 +14,7 @@ mod delay;
 mod extrapolate;
 mod filter;
 mod march;
+mod model;
 mod network;
 mod rest;
 mod source;
@@ -21,7 +22,8 @@ mod steps;
 mod travelling;
 
 pub use clamp::Clamps;
-pub use march::{MarchReport, Settled, SettledWaveform, Taken, WaveRecord, settle};
+pub use march::{MarchReport, Settled, SettledWaveform, Taken, WaveRecord, settle, settle_lines};
+pub use model::{Model, line_models};
 pub use network::{Branch, BranchEnd, DRIVER_NODE, Input, Network, Span};
 pub use rest::rest_levels_v;
 pub use source::Source;

@@ -66,6 +66,14 @@ impl Source {
         self.rise_s.min(self.fall_s)
     }
 
+    /// Whether one half of a period of this length is the other upside down.
+    pub(super) fn is_mirrored(&self, period_s: f64) -> bool {
+        self.is_steady()
+            && self.rise_s == self.fall_s
+            && self.rise_s <= self.fall_start_s
+            && (self.fall_start_s / period_s - 0.5).abs() < 1e-12
+    }
+
     /// Share of the high state at a time within the period, 0 to 1.
     pub fn high_share(&self, time_s: f64) -> f64 {
         if time_s < self.rise_s {

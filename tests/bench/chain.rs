@@ -1,18 +1,20 @@
-//! Time of the whole chain a net (march, transform, radiation, both distances) and its ratio to the transform of
-//! the net's own waveforms. `cargo bench --bench chain`
+//! Time of the whole chain a net (fit, march, transform, radiation, both distances), its ratio to the transform of the
+//! net's own waveforms, and nets a second on all cores. `cargo bench --bench chain`
 //!
-//! Everything runs on one thread, and the ratios are from one run, since machines differ.
+//! Splits and ratios are of one thread and one run, since machines differ.
 
 #![allow(clippy::print_stdout)]
 
 use std::hint::black_box;
 use std::time::{Duration, Instant};
 
+use rayon::prelude::*;
+
 use ringfield::board::read_board;
 use ringfield::board::{Board, Net};
 use ringfield::limit::default_limits;
 use ringfield::radiation::{Heights, LargePlane, Layout, Site, lit_segments, strongest};
-use ringfield::ringing::{Network, settle};
+use ringfield::ringing::{Network, line_models, settle, settle_lines};
 use ringfield::spectrum::spectrum;
 use ringfield::study::{CheckSetup, MODEL_SIGMA_DB, Unwatched, judge_all, ring};
 
@@ -20,15 +22,31 @@ const LOWEST_HZ: f64 = 30e6;
 const TOP_HZ: f64 = 1e9;
 
 fn main() {
-    let pool = rayon::ThreadPoolBuilder::new()
-        .num_threads(1)
-        .build_global();
-    pool.expect("the first pool");
+    let pool = rayon::ThreadPoolBuilder::new().num_threads(1).build();
+    let pool = pool.expect("a pool");
     let (one, thousand) = (board(1), board(1000));
     println!("clamped nets on a 4 mil microstrip, lossy, 25-125 MHz, to 1 GHz; one thread");
     for (label, board, rounds) in [("one net", &one, 200), ("1 000 nets", &thousand, 1)] {
-        report(label, board, rounds);
+        pool.install(|| report(label, board, rounds));
     }
+    all_cores(&board(10_000));
+}
+
+/// Ringing and spectrum of every net.
+fn all_cores(board: &Board) {
+    let started = Instant::now();
+    board.nets.par_iter().for_each(|net| {
+        let network = Network::of(net);
+        let settled = settle(&network, TOP_HZ);
+        assert!(settled.report.settled, "{}", net.name);
+        black_box(spectrum(&network, &settled, LOWEST_HZ, TOP_HZ));
+    });
+    let taken_s = started.elapsed().as_secs_f64();
+    println!(
+        "10 000 nets, ringing and spectrum, {} threads: {taken_s:.2} s, {:.0} nets/s",
+        rayon::current_num_threads(),
+        board.nets.len() as f64 / taken_s
+    );
 }
 
 fn report(label: &str, board: &Board, rounds: u32) {
@@ -52,9 +70,19 @@ fn report(label: &str, board: &Board, rounds: u32) {
     // A first net fills the caches of plans and pages.
     check(&nets[0]);
     let whole = time(nets, rounds, check);
-    let march = time(nets, rounds, |net| {
-        let network = Network::of(net);
-        black_box(settle(&network, TOP_HZ));
+    let modelled: Vec<_> = nets
+        .iter()
+        .map(|net| {
+            let network = Network::of(net);
+            let models = line_models(&network, TOP_HZ);
+            (network, models)
+        })
+        .collect();
+    let fit = time(&modelled, rounds, |(network, _)| {
+        black_box(line_models(network, TOP_HZ));
+    });
+    let march = time(&modelled, rounds, |(network, models)| {
+        black_box(settle_lines(network, models, TOP_HZ));
     });
     let worked: Vec<_> = nets
         .iter()
@@ -91,18 +119,19 @@ fn report(label: &str, board: &Board, rounds: u32) {
         .sum();
     let micros = |time: Duration| time.as_secs_f64() * 1e6;
     println!(
-        "{label}: {:.0} us a net, {:.1} times its transform",
-        micros(whole),
+        "{label}: {:.3} ms a net, {:.1} times its transform",
+        micros(whole) / 1e3,
         micros(whole) / micros(transform)
     );
     println!(
-        "  march {:.0} us ({:.1} ns a step, {} steps), transform {:.1} us, radiation {:.0} us, rest {:.0} us",
+        "  fit {:.1} us, march {:.0} us ({} steps of {:.1} ns), transform {:.1} us, radiation {:.0} us, rest {:.0} us",
+        micros(fit),
         micros(march),
-        micros(march) * 1e3 * nets.len() as f64 / steps as f64,
         steps / nets.len(),
+        micros(march) * 1e3 * nets.len() as f64 / steps as f64,
         micros(transform),
         micros(radiation),
-        micros(whole) - micros(march) - micros(transform) - micros(radiation)
+        micros(whole) - micros(fit) - micros(march) - micros(transform) - micros(radiation)
     );
 }
 

@@ -8,6 +8,7 @@
 pub mod build;
 pub mod lit;
 pub mod published;
+pub mod run;
 
 use num_complex::Complex64;
 use ringfield::board::{DirectLine, Driver, EdgeShape, Net, PathItem, ReceiverPart, Shunt, Trace};

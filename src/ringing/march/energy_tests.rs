@@ -25,9 +25,13 @@ struct Powers {
 }
 
 impl Powers {
-    /// Marches one more period of a settled net and watches every part.
+    /// Marches one more round of a settled net and watches every part. Voltages are counted from the middle of the
+    /// driver's levels, which shifts no power: all currents into the net add up to none.
     fn of(march: &mut March) -> Self {
-        let steps = march.pace.marched();
+        let steps = march.drive.len();
+        if march.mirrored {
+            march.negate();
+        }
         let mut records = vec![vec![0.0; steps]; 4 + march.lines.len()];
         for step in 0..steps {
             march.one_step(step);
@@ -47,7 +51,8 @@ impl Powers {
             }
             for input in &march.network.inputs {
                 let input_v = voltage_v[input.node];
-                records[3][step] += input_v * input.clamps.load(input_v).0;
+                let clamps = input.clamps.from_middle(march.middle_v);
+                records[3][step] += input_v * clamps.load(input_v).0;
             }
             for (line, record) in march.lines.iter().zip(&mut records[4..]) {
                 if let LineState::Waves(line) = line {
@@ -57,7 +62,11 @@ impl Powers {
         }
         let means: Vec<f64> = records
             .iter()
-            .map(|record| march.pace.mean(record, |power_w| power_w))
+            .map(|record| match march.mirrored {
+                // The other half of the period takes the same power.
+                true => record.iter().sum::<f64>() / steps as f64,
+                false => march.pace.mean(record, |power_w| power_w),
+            })
             .collect();
         Self {
             given_w: means[0],
@@ -102,7 +111,7 @@ fn settled_powers(net: &Net) -> Option<(Powers, Network)> {
     let network = Network::of(net);
     let mut pace = Pace::first(&network, TOP_HZ);
     loop {
-        let mut march = March::new(&network, pace, TOP_HZ);
+        let mut march = March::new(&network, &line_models(&network, TOP_HZ), pace, TOP_HZ);
         let report = march.settle();
         if pace.is_whole() || march.restlessness() < SETTLED * network.source.swing_v() {
             let powers = report.settled.then(|| Powers::of(&mut march));
