@@ -4,7 +4,7 @@ use std::path::{Path, PathBuf};
 
 use clap::Args;
 use rayon::prelude::*;
-use ringfield::board::{Board, CableRun, Reading, UnusableNet, read_board};
+use ringfield::board::{Board, CableRun, Reading, UnusableNet};
 use ringfield::limit::{Limit, LimitAt, default_limits, limits_at};
 use ringfield::radiation::{COMPARED_TO_HZ, UNKNOWN_CABLE_LENGTHS_M};
 use ringfield::show::{
@@ -106,8 +106,7 @@ pub fn run(options: &Options) -> Result<Ending, Refusal> {
 
 /// Reads the board file and passes on what there is to say about it.
 fn read(path: &Path) -> Result<Reading, Refusal> {
-    let text = input::read_text(path)?;
-    let reading = read_board(&text, &path.display().to_string());
+    let reading = input::board(path)?;
     for diagnostic in &reading.diagnostics {
         output::tell(&diagnostic.render());
     }

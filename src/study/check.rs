@@ -5,7 +5,7 @@ use super::signal::signal;
 use super::verdict::{Verdict, chance_of_failing, total_sigma_db};
 use super::watch::Watch;
 use super::{FieldReading, Harmonic, NetResult, Worst};
-use crate::board::{Board, Net};
+use crate::board::{Board, Group, Net, Phase};
 use crate::limit::{Limit, LimitAt, limits_at};
 use crate::radiation::{
     Antenna, LargePlane, Layout, LitSegment, Site, Strongest, WorstOf, lit_segments,
@@ -47,6 +47,8 @@ pub struct RungNet {
     settled: Settled,
     spectrum: Spectrum,
     layout: Layout,
+    /// What the field of one line is multiplied by.
+    gain: f64,
     warnings: Vec<String>,
 }
 
@@ -63,14 +65,30 @@ pub fn ring(net: &Net, board: &Board, setup: &CheckSetup) -> RungNet {
     let layout = Layout::of(&network, net, board.plane.as_ref());
     let mut warnings = warnings(&network, &layout, &settled, &spectrum);
     warnings.extend(board.plane.and_then(|plane| layout.place_warning(&plane)));
+    warnings.extend(group_remark(&net.group));
     RungNet {
         name: net.name.clone(),
         network,
         settled,
         spectrum,
         layout,
+        gain: net.group.gain(),
         warnings,
     }
+}
+
+/// What has to be said of a net that stands for several lines.
+fn group_remark(group: &Group) -> Option<String> {
+    let (step, count) = match group.phase {
+        Phase::Locked => ("in step, their worst case", group.count),
+        Phase::Independent => ("out of step, added by power", group.count),
+    };
+    (count > 1).then(|| {
+        format!(
+            "stands for {count} lines: its field is that of all of them {step} ({:+.1} dB)",
+            20.0 * group.gain().log10()
+        )
+    })
 }
 
 /// Ringing and spectrum of several nets, in their order.
@@ -221,12 +239,13 @@ fn harmonics(net: &RungNet, far_fields: &[Strongest], setup: &CheckSetup) -> Vec
             let frequency_hz = spectrum.frequency_hz(place);
             let driver_current_a = spectrum.driver_a[place].norm();
             let reading = |&distance_m: &f64| {
-                let at_distance = near_field_factor(frequency_hz, distance_m)
+                let at_distance = net.gain
+                    * near_field_factor(frequency_hz, distance_m)
                     * setup.site.factor(frequency_hz, distance_m)
                     / distance_m;
                 let level = |far_field_v: f64| level_dbuv_per_m(far_field_v * at_distance);
-                let loop_v_per_m =
-                    loop_area_v_per_m(frequency_hz, area_m2, driver_current_a, distance_m);
+                let loop_v_per_m = net.gain
+                    * loop_area_v_per_m(frequency_hz, area_m2, driver_current_a, distance_m);
                 FieldReading {
                     distance_m,
                     field_dbuv_per_m: level(strongest.total_v),

@@ -57,6 +57,11 @@ impl<'d> Report<'d> {
         self.diagnostics.into_inner()
     }
 
+    /// Name of the file.
+    pub fn file(&self) -> &str {
+        self.document.file
+    }
+
     /// Whether any error was reported.
     pub fn has_errors(&self) -> bool {
         self.diagnostics

@@ -3,7 +3,7 @@
 use std::cell::RefCell;
 use std::sync::Arc;
 
-use super::super::{Along, Driver, Layer, Net, Plane, ReceiverPart};
+use super::super::{Along, Driver, Group, Layer, Net, Phase, Plane, ReceiverPart};
 use super::antenna::in_mm;
 use super::path::PathReader;
 use super::{Definitions, Unavailable};
@@ -17,9 +17,9 @@ const ROUNDING: f64 = 1e-9;
 pub(super) struct NetReader<'r> {
     pub(super) report: &'r Report<'r>,
     pub(super) plane: Option<Plane>,
-    pub(super) layers: Definitions<Layer>,
-    pub(super) drivers: Definitions<Driver>,
-    pub(super) receivers: Definitions<ReceiverPart>,
+    pub(super) layers: &'r Definitions<Layer>,
+    pub(super) drivers: &'r Definitions<Driver>,
+    pub(super) receivers: &'r Definitions<ReceiverPart>,
 }
 
 impl NetReader<'_> {
@@ -36,7 +36,7 @@ impl NetReader<'_> {
     }
 
     fn read(&self, node: &Node, unreadable: &RefCell<Option<String>>) -> Option<Net> {
-        const FIELDS: [&str; 7] = [
+        const FIELDS: [&str; 10] = [
             "name",
             "driver",
             "clock",
@@ -44,6 +44,9 @@ impl NetReader<'_> {
             "path",
             "edge_distance",
             "along",
+            "count",
+            "clock_source",
+            "phase",
         ];
         const ALONG: [(&str, Along); 2] = [("length", Along::Length), ("width", Along::Width)];
         let mut fields = self.report.fields(node, "the net", &FIELDS)?;
@@ -53,7 +56,7 @@ impl NetReader<'_> {
         }
         let driver = fields
             .require_name("driver")
-            .and_then(|name| self.find(&self.drivers, fields.get("driver")?, &name, unreadable));
+            .and_then(|name| self.find(self.drivers, fields.get("driver")?, &name, unreadable));
         let clock_hz = fields.require_quantity("clock", Dimension::Frequency, Range::Positive);
         let duty = self.duty(&fields);
         if let (Some(driver), Some(clock_hz), Some(duty)) = (&driver, clock_hz, duty) {
@@ -61,6 +64,7 @@ impl NetReader<'_> {
         }
         let along = fields.choice("along", &ALONG).unwrap_or_default();
         let edge_distance_m = self.edge_distance(&fields, along);
+        let group = self.group(&fields);
         let path = fields
             .require("path", "a list of items outwards from the driver")
             .and_then(|node| PathReader::new(self, unreadable).path(node, &fields.owner));
@@ -72,6 +76,7 @@ impl NetReader<'_> {
             path: path?,
             edge_distance_m,
             along,
+            group,
         })
     }
 
@@ -106,6 +111,29 @@ impl NetReader<'_> {
             d.expected("more than 0 % and less than 100 %")
         });
         None
+    }
+
+    /// How many lines the net stands for, and what they keep step with.
+    fn group(&self, fields: &Fields) -> Group {
+        const PHASES: [(&str, Phase); 2] = [
+            ("locked", Phase::Locked),
+            ("independent", Phase::Independent),
+        ];
+        const MOST: f64 = 10_000.0;
+        let count = fields.quantity("count", Dimension::Number, Range::AtLeastOne);
+        if let (Some(count), Some(node)) = (count, fields.get("count"))
+            && (count.fract() != 0.0 || count > MOST)
+        {
+            let message = format!("{} cannot be {}", fields.called("count"), node.describe());
+            self.report.error(node, message, |d| {
+                d.expected("a whole number of lines from 1 to 10000")
+            });
+        }
+        Group {
+            count: count.map_or(1, |count| count as u32),
+            clock_source: fields.name("clock_source").map(Arc::from),
+            phase: fields.choice("phase", &PHASES).unwrap_or_default(),
+        }
     }
 
     /// The distance of a straight path from the nearest edge of the plane.

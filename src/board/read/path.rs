@@ -121,7 +121,7 @@ impl<'r> PathReader<'r> {
         let layer = fields.require_name("layer").and_then(|name| {
             let node = fields.get("layer")?;
             self.reader
-                .find(&self.reader.layers, node, &name, self.unreadable)
+                .find(self.reader.layers, node, &name, self.unreadable)
         });
         let width_m = fields.require_quantity("width", Dimension::Length, Range::Positive);
         let (length_m, points_m) = run(&fields, self.reader.plane);
@@ -227,7 +227,7 @@ impl<'r> PathReader<'r> {
         }
         let part = self
             .reader
-            .find(&self.reader.receivers, part_node, &part, self.unreadable)?;
+            .find(self.reader.receivers, part_node, &part, self.unreadable)?;
         self.given_names
             .borrow_mut()
             .push(name.map(|(_, name)| name));
