@@ -5,11 +5,12 @@ mod front;
 use std::process::ExitCode;
 
 use clap::Parser;
-use front::{Arguments, Command, check, limits};
+use front::{Arguments, Command, check, limits, rank};
 
 fn main() -> ExitCode {
     let outcome = match Arguments::parse().command {
         Command::Check(options) => check::run(&options),
+        Command::Rank(options) => rank::run(&options),
         Command::Limits(options) => limits::run(&options),
     };
     front::finish(outcome)

@@ -104,8 +104,8 @@ pub fn run(options: &Options) -> Result<Ending, Refusal> {
     })
 }
 
-/// Reads the board file and passes on what there is to say about it.
-fn read(path: &Path) -> Result<Reading, Refusal> {
+/// Reads a board file and passes on what there is to say about it.
+pub(super) fn read(path: &Path) -> Result<Reading, Refusal> {
     let reading = input::board(path)?;
     for diagnostic in &reading.diagnostics {
         output::tell(&diagnostic.render());
@@ -113,7 +113,7 @@ fn read(path: &Path) -> Result<Reading, Refusal> {
     Ok(reading)
 }
 
-fn has_errors(reading: &Reading) -> bool {
+pub(super) fn has_errors(reading: &Reading) -> bool {
     let mut diagnostics = reading.diagnostics.iter();
     diagnostics.any(|diagnostic| diagnostic.severity == Severity::Error)
 }
@@ -232,7 +232,7 @@ fn setup(
 }
 
 /// What has to be said of frequencies at which nothing was compared.
-fn beyond_comparison(board: &Board, setup: &CheckSetup) -> Option<String> {
+pub(super) fn beyond_comparison(board: &Board, setup: &CheckSetup) -> Option<String> {
     (board.plane.is_some() && setup.top_frequency_hz > COMPARED_TO_HZ).then(|| {
         "Above 2 GHz the plane's and the cables' part in the figures has not been compared with any \
          other solution."
@@ -241,7 +241,7 @@ fn beyond_comparison(board: &Board, setup: &CheckSetup) -> Option<String> {
 }
 
 /// What has to be said about the cables.
-fn cable_remarks(board: &Board) -> Vec<String> {
+pub(super) fn cable_remarks(board: &Board) -> Vec<String> {
     let Some(cables) = board.cables.as_deref() else {
         return vec![
             "The file does not say what hangs on the board (`cables: []` says that nothing does), \

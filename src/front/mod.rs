@@ -2,11 +2,13 @@
 
 pub mod check;
 mod input;
+mod interrupt;
 pub mod limits;
 mod options;
 mod output;
 mod pictures;
 mod progress;
+pub mod rank;
 
 use std::process::ExitCode;
 
@@ -29,6 +31,8 @@ pub struct Arguments {
 pub enum Command {
     /// Tell which nets of a board will likely fail
     Check(check::Options),
+    /// Rank the nets of a whole board, and add up what they make together
+    Rank(rank::Options),
     /// Tell what limit lines say
     Limits(limits::Options),
 }

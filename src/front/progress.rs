@@ -1,5 +1,6 @@
 //! A progress bar on anything over a second, on a terminal only.
 
+use std::sync::atomic::{AtomicBool, Ordering};
 use std::time::{Duration, Instant};
 
 use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
@@ -9,19 +10,31 @@ use ringfield::study::Watch;
 pub struct Progress {
     bar: ProgressBar,
     started: Instant,
+    /// Set by whoever wants the study to stop.
+    stop: Option<&'static AtomicBool>,
 }
 
 impl Progress {
     /// Before anything has begun.
     pub fn new() -> Self {
         let bar = ProgressBar::with_draw_target(None, ProgressDrawTarget::hidden());
-        if let Ok(style) = ProgressStyle::with_template("{bar:30} {pos} of {len} {msg}") {
+        if let Ok(style) =
+            ProgressStyle::with_template("{bar:30} {pos} of {len} {msg}, {per_sec}, {eta} left")
+        {
             bar.set_style(style);
         }
         Self {
             bar,
             started: Instant::now(),
+            stop: None,
         }
+    }
+
+    /// The same, for a study that ends early once the flag is set.
+    pub fn until(stop: &'static AtomicBool) -> Self {
+        let mut progress = Self::new();
+        progress.stop = Some(stop);
+        progress
     }
 }
 
@@ -30,6 +43,7 @@ impl Watch for Progress {
         self.bar.set_message(what);
         self.bar.set_length(count as u64);
         self.bar.set_position(0);
+        self.bar.reset_eta();
     }
 
     fn step(&self) {
@@ -38,6 +52,10 @@ impl Watch for Progress {
             self.bar.set_draw_target(ProgressDrawTarget::stderr());
         }
         self.bar.inc(1);
+    }
+
+    fn is_stopped(&self) -> bool {
+        self.stop.is_some_and(|stop| stop.load(Ordering::Relaxed))
     }
 }
 

@@ -64,9 +64,9 @@ pub fn waveform_csv(net: &NetResult) -> String {
     with_notice(writer)
 }
 
-const IN_MEMORY: &str = "rows of one length always fit into memory as text";
+pub(super) const IN_MEMORY: &str = "rows of one length always fit into memory as text";
 
-fn with_notice(writer: Writer<Vec<u8>>) -> String {
+pub(super) fn with_notice(writer: Writer<Vec<u8>>) -> String {
     let bytes = writer.into_inner().expect(IN_MEMORY);
     let mut text = String::from_utf8(bytes).expect("made of text");
     text.push_str("# notice: ");

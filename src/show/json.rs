@@ -5,7 +5,9 @@ use std::collections::BTreeMap;
 use serde::Serialize;
 
 use super::{CheckReport, NOTICE, words};
-use crate::study::{ClampSignal, Harmonic, NetResult, ReceiverSignal, Signal};
+use crate::board::UnusableNet;
+use crate::limit::LimitAt;
+use crate::study::{ClampSignal, Harmonic, NetResult, ReceiverSignal, Signal, Worst};
 
 /// The whole report as one JSON object; a number that is not finite is `null`.
 pub fn check_json(report: &CheckReport) -> String {
@@ -13,30 +15,40 @@ pub fn check_json(report: &CheckReport) -> String {
         notice: NOTICE,
         board: &report.board,
         site: words::site(report.site),
-        limits: report
-            .limits
-            .iter()
-            .map(|limit| LimitEntry {
-                title: &limit.title,
-                distance_m: limit.distance_m,
-                note: limit.note(),
-            })
-            .collect(),
+        limits: limit_entries(&report.limits),
         remarks: &report.remarks,
         nets: report.nets.iter().map(net_entry).collect(),
-        unusable: report
-            .unusable
-            .iter()
-            .map(|net| UnusableEntry {
-                name: &net.name,
-                reason: &net.reason,
-            })
-            .collect(),
+        unusable: unusable_entries(&report.unusable),
     };
-    let mut text = serde_json::to_string_pretty(&document)
+    text(&document)
+}
+
+/// A document as text.
+pub(super) fn text(document: &impl Serialize) -> String {
+    let mut text = serde_json::to_string_pretty(document)
         .expect("plain structs with text keys always serialise");
     text.push('\n');
     text
+}
+
+pub(super) fn limit_entries(limits: &[LimitAt]) -> Vec<LimitEntry<'_>> {
+    limits
+        .iter()
+        .map(|limit| LimitEntry {
+            title: &limit.title,
+            distance_m: limit.distance_m,
+            note: limit.note(),
+        })
+        .collect()
+}
+
+pub(super) fn unusable_entries(nets: &[UnusableNet]) -> Vec<UnusableEntry<'_>> {
+    nets.iter()
+        .map(|net| UnusableEntry {
+            name: &net.name,
+            reason: &net.reason,
+        })
+        .collect()
 }
 
 #[derive(Serialize)]
@@ -51,14 +63,14 @@ struct Document<'a> {
 }
 
 #[derive(Serialize)]
-struct LimitEntry<'a> {
+pub(super) struct LimitEntry<'a> {
     title: &'a str,
     distance_m: f64,
     note: Option<String>,
 }
 
 #[derive(Serialize)]
-struct UnusableEntry<'a> {
+pub(super) struct UnusableEntry<'a> {
     name: &'a str,
     reason: &'a str,
 }
@@ -76,7 +88,7 @@ struct NetEntry<'a> {
 }
 
 #[derive(Serialize)]
-struct WorstEntry<'a> {
+pub(super) struct WorstEntry<'a> {
     limit: &'a str,
     harmonic: usize,
     frequency_hz: f64,
@@ -144,16 +156,7 @@ fn net_entry(net: &NetResult) -> NetEntry<'_> {
         clock_hz: net.clock_hz,
         verdict: net.verdict.as_str(),
         chance_of_failing: net.chance_of_failing,
-        worst: net.worst.as_ref().map(|worst| WorstEntry {
-            limit: &worst.limit,
-            harmonic: worst.harmonic,
-            frequency_hz: worst.frequency_hz,
-            distance_m: worst.distance_m,
-            field_dbuv_per_m: worst.field_dbuv_per_m,
-            limit_dbuv_per_m: worst.limit_dbuv_per_m,
-            margin_db: worst.margin_db,
-            mainly: worst.mechanism.as_str(),
-        }),
+        worst: net.worst.as_ref().map(worst_entry),
         harmonics: net
             .harmonics
             .iter()
@@ -161,6 +164,19 @@ fn net_entry(net: &NetResult) -> NetEntry<'_> {
             .collect(),
         signal: signal_entry(&net.signal),
         warnings: &net.warnings,
+    }
+}
+
+pub(super) fn worst_entry(worst: &Worst) -> WorstEntry<'_> {
+    WorstEntry {
+        limit: &worst.limit,
+        harmonic: worst.harmonic,
+        frequency_hz: worst.frequency_hz,
+        distance_m: worst.distance_m,
+        field_dbuv_per_m: worst.field_dbuv_per_m,
+        limit_dbuv_per_m: worst.limit_dbuv_per_m,
+        margin_db: worst.margin_db,
+        mainly: worst.mechanism.as_str(),
     }
 }
 

@@ -7,6 +7,7 @@ mod findings;
 mod json;
 mod limit_listing;
 mod plot;
+mod rank;
 #[cfg(test)]
 mod samples;
 mod table;
@@ -15,7 +16,10 @@ mod words;
 pub use csv::{harmonics_csv, waveform_csv};
 pub use json::check_json;
 pub use limit_listing::{limit_at_listing, limit_listing};
-pub use plot::{Picture, spectrum_picture, waveform_picture};
+pub use plot::{
+    Picture, board_spectrum_picture, ranking_picture, spectrum_picture, waveform_picture,
+};
+pub use rank::{RankReport, rank_json, rank_table, ranking_csv};
 pub use table::{check_table, march_table};
 pub use words::distance;
 

@@ -2,12 +2,17 @@
 
 mod band;
 mod check;
+mod rank;
 mod signal;
 mod verdict;
 mod watch;
 
 pub use band::scan_band_hz;
 pub use check::{CheckSetup, RungNet, board_antenna, check, judge_all, ring, ring_all};
+pub use rank::{
+    BoardSum, Change, Filter, OWNERS_NAMED, Owner, RankedNet, Ranking, Remedy, SumLevel, SumLine,
+    SumWorst, Tally, rank,
+};
 pub use signal::{ClampSignal, ReceiverSignal, Signal};
 pub use verdict::{
     INSTRUMENT_SIGMA_DB, MODEL_SIGMA_DB, Verdict, chance_of_failing, total_sigma_db,

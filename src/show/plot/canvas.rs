@@ -17,7 +17,7 @@ const COST_LABEL: f64 = 1000.0;
 const COST_MARKER: f64 = 20.0;
 const COST_LIMIT: f64 = 15.0;
 const COST_STEM: f64 = 4.0;
-const COST_LOOP: f64 = 3.0;
+const COST_BESIDE: f64 = 3.0;
 
 /// Radius of the ring around the worst harmonic.
 const RING: f64 = 7.0;
@@ -74,13 +74,13 @@ impl Canvas {
             self.obstacles.add_rect(around((x, y), radius), COST_MARKER);
         }
         for line in lines {
-            let Some(level) = line.loop_area.filter(|level| *level >= lowest) else {
+            let Some(level) = line.beside.filter(|level| *level >= lowest) else {
                 continue;
             };
             let at = self.point(line.frequency_hz, level);
             self.picture
                 .marker(Marker::HollowDiamond, at, radius + 0.4, GREY);
-            self.obstacles.add_rect(around(at, radius), COST_LOOP);
+            self.obstacles.add_rect(around(at, radius), COST_BESIDE);
         }
     }
 
@@ -182,11 +182,16 @@ impl Canvas {
         self.obstacles.add_line(&[marker, limit], COST_MARKER);
     }
 
-    /// Says in words what the worst margin is, in a box with a leader.
+    /// Says in words what the worst margin is.
     pub fn write_callout(&mut self, worst: &WorstHere) {
+        let at = (worst.line.frequency_hz, worst.line.level);
+        self.write_box(at, &callout_words(worst));
+    }
+
+    /// Writes lines of text, the first in bold, in a box with a leader to a frequency and level.
+    pub fn write_box(&mut self, (frequency_hz, level): (f64, f64), words: &[String]) {
         const LINE: f64 = LABEL_SIZE + 4.0;
-        let words = callout_words(worst);
-        let marker = self.point(worst.line.frequency_hz, worst.line.level);
+        let marker = self.point(frequency_hz, level);
         let width = words
             .iter()
             .enumerate()
@@ -232,6 +237,7 @@ impl Canvas {
             .line(&[toward(marker, end, RING), end], Pen::solid(BLACK, 1.0));
         self.picture.area(&rect.corners(), WHITE, 0.9);
         self.picture.outline(&rect, Pen::solid(BLACK, 1.0));
+        self.obstacles.add_rect(rect.grown(4.0), COST_LABEL);
         for (index, line) in words.iter().enumerate() {
             self.picture.text(Text {
                 bold: index == 0,
