@@ -3,6 +3,7 @@
 mod answers;
 mod documents;
 mod files;
+mod rank;
 mod readings;
 mod refusals;
 

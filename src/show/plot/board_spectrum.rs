@@ -18,9 +18,14 @@ const NAMED: usize = 5;
 /// A power sum this near to the sum is not worth a mark of its own.
 const APART_DB: f64 = 0.1;
 
+/// Lines that lie further below the highest are left out, and the picture says so.
+const DEPTH_DB: f64 = 50.0;
+/// Above everything drawn, for the owners' names.
+const ROOM_FOR_NAMES_DB: f64 = 30.0;
+
 /// The spectrum of a whole board at one distance.
 pub fn board_spectrum_picture(report: &RankReport, distance_m: f64) -> Picture {
-    let lines = lines(report, distance_m);
+    let (lines, hidden) = worth_showing(lines(report, distance_m));
     let limits: Vec<&LimitAt> = report
         .limits
         .iter()
@@ -43,8 +48,9 @@ pub fn board_spectrum_picture(report: &RankReport, distance_m: f64) -> Picture {
         ),
     );
     let frequencies = frequency_range(&lines);
-    let levels = level_range(&lines, &limits, frequencies);
-    let mut canvas = canvas(picture, frequencies, levels, &lines);
+    let (lowest, highest) = level_range(&lines, &limits, frequencies);
+    let levels = (lowest, highest + ROOM_FOR_NAMES_DB);
+    let mut canvas = canvas(picture, frequencies, levels, hidden);
     canvas.draw_harmonics(&lines);
     let drawn = canvas.draw_limits(&limits);
     let rows = rows(report, distance_m);
@@ -66,10 +72,16 @@ pub fn board_spectrum_picture(report: &RankReport, distance_m: f64) -> Picture {
     for limit in &drawn {
         canvas.label_limit(limit);
     }
-    for (place, row) in shown.iter().enumerate() {
-        let at = (row.frequency_hz, row.level.field_dbuv_per_m);
-        canvas.write_box(at, &box_words(row, place == 0));
-    }
+    let mut boxes: Vec<_> = shown
+        .iter()
+        .enumerate()
+        .map(|(place, row)| {
+            let at = (row.frequency_hz, row.level.field_dbuv_per_m);
+            (at, box_words(row, place == 0))
+        })
+        .collect();
+    boxes.sort_by(|a, b| a.0.0.total_cmp(&b.0.0));
+    canvas.write_boxes(&boxes);
     if drawn.is_empty() {
         let distance = words::distance(distance_m);
         let sentence = format!("No limit line given covers this range at {distance}");
@@ -85,9 +97,8 @@ fn canvas(
     mut picture: Picture,
     frequencies: (f64, f64),
     levels: (f64, f64),
-    lines: &[Line],
+    hidden: usize,
 ) -> Canvas {
-    let hidden = lines.iter().filter(|line| line.level < levels.0).count();
     let top = legend(&mut picture, &legend_entries(hidden));
     let rect = Rect {
         left: PANEL_LEFT,
@@ -144,27 +155,17 @@ fn box_words(row: &SumRow, is_worst: bool) -> Vec<String> {
     } else {
         format!("{frequency}: {margin_db:.1} dB")
     }];
-    let named = row.level.owners.len();
-    for owner in &row.level.owners {
-        let share = if row.level.nets == 1 {
-            "alone".to_owned()
-        } else {
-            format!("{:.1} dB less without it", owner.relief_db)
-        };
-        // Only the worst has room for words.
-        lines.push(match is_worst {
-            true => format!(
-                "{}: {share}",
-                shortened(&owner.net, LABEL_SIZE, false, 150.0)
-            ),
-            false => shortened(&owner.net, LABEL_SIZE, false, 130.0),
+    for owner in row.named_owners() {
+        let name = shortened(&owner.net, LABEL_SIZE, false, 150.0);
+        lines.push(match (is_worst, row.level.nets) {
+            (_, 1) => format!("{name} alone"),
+            (true, _) => format!("{name}: {:.1} dB less without it", owner.relief_db),
+            // Only the worst has room for more words.
+            (false, _) => name,
         });
     }
-    if !is_worst {
-        lines.truncate(3);
-    }
     let left = row.level.nets.saturating_sub(lines.len() - 1);
-    if named > 0 && left > 0 {
+    if left > 0 {
         lines.push(format!("and {left} more"));
     }
     lines
@@ -189,6 +190,19 @@ fn lines(report: &RankReport, distance_m: f64) -> Vec<Line> {
         .collect()
 }
 
+/// The lines that are not far below the highest, and the number of the others.
+fn worth_showing(mut lines: Vec<Line>) -> (Vec<Line>, usize) {
+    let levels = lines.iter().map(|line| line.level);
+    let lowest = levels.fold(f64::NEG_INFINITY, f64::max) - DEPTH_DB;
+    let before = lines.len();
+    lines.retain(|line| line.level >= lowest);
+    for line in &mut lines {
+        line.beside = line.beside.filter(|level| *level >= lowest);
+    }
+    let hidden = before - lines.len();
+    (lines, hidden)
+}
+
 /// The lines of the sum at one distance, worst first.
 fn rows(report: &RankReport, distance_m: f64) -> Vec<SumRow<'_>> {
     let distance = report.distances_m.iter().position(|d| *d == distance_m);
@@ -208,4 +222,68 @@ fn frequency_range(lines: &[Line]) -> (f64, f64) {
         .map(|line| line.frequency_hz)
         .fold(10.0 * lowest, f64::max);
     (lowest / 1.02, highest * (highest / lowest).powf(0.015))
+}
+
+#[cfg(test)]
+mod tests {
+    use crate::show::plot::{board_spectrum_picture, ranking_picture};
+    use crate::show::{NOTICE, samples};
+
+    #[test]
+    fn both_pictures_say_what_they_show() {
+        let report = samples::rank_report();
+        let svg = board_spectrum_picture(&report, 3.0).svg();
+        for words in [
+            "All nets together at 3 m",
+            "47 CFR 15.109 class B",
+            "Frequency (MHz)",
+            "Field strength (dBµV/m)",
+            "worst margin -6.5 dB (over the limit) at 144 MHz",
+            "CAM_D: 4.0 dB less without it",
+            "and 5 more",
+            NOTICE,
+        ] {
+            assert!(svg.contains(words), "{words}");
+        }
+        let svg = ranking_picture(&report).svg();
+        for words in [
+            "Estimate less limit (dB)",
+            "all nets together",
+            "CAM_D ×16",
+            "one standard deviation each way",
+            "limit\n",
+            NOTICE,
+        ] {
+            assert!(svg.contains(words), "{words}");
+        }
+        assert!(!svg.contains("PARTIAL"));
+    }
+
+    #[test]
+    fn a_partial_ranking_says_so_in_every_picture() {
+        let mut report = samples::rank_report();
+        report.ranking.of = 900;
+        assert!(
+            board_spectrum_picture(&report, 10.0)
+                .svg()
+                .contains("PARTIAL")
+        );
+        assert!(ranking_picture(&report).svg().contains("PARTIAL"));
+    }
+
+    #[test]
+    fn nothing_to_show_is_said_not_hidden() {
+        let mut report = samples::rank_report();
+        report.limits.clear();
+        report.ranking.listed.clear();
+        report.ranking.sum = Default::default();
+        let svg = board_spectrum_picture(&report, 3.0).svg();
+        assert!(svg.contains("No limit line given covers this range at 3 m"));
+        assert!(svg.contains("No net has a field at this distance"));
+        assert!(
+            ranking_picture(&report)
+                .svg()
+                .contains("No net could be judged")
+        );
+    }
 }

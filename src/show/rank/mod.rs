@@ -12,7 +12,7 @@ use super::words;
 use crate::board::UnusableNet;
 use crate::limit::LimitAt;
 use crate::radiation::Site;
-use crate::study::{Change, Ranking, Remedy, SumLevel, SumLine};
+use crate::study::{Change, Owner, Ranking, Remedy, SumLevel, SumLine};
 
 /// The answer of a ranking, ready to be shown.
 #[derive(Debug, Clone)]
@@ -33,6 +33,9 @@ pub struct RankReport {
     pub remarks: Vec<String>,
 }
 
+/// An owner whose part is smaller is not named.
+const WORTH_NAMING_DB: f64 = 0.1;
+
 /// A line of the sum where it is worst.
 pub(super) struct SumRow<'a> {
     pub frequency_hz: f64,
@@ -45,6 +48,14 @@ pub(super) struct SumRow<'a> {
 impl SumRow<'_> {
     pub fn margin_db(&self) -> f64 {
         self.limit_dbuv_per_m - self.level.field_dbuv_per_m
+    }
+
+    /// The owners without which the sum would fall by something to speak of; one at least.
+    pub fn named_owners(&self) -> impl Iterator<Item = &Owner> {
+        let owners = self.level.owners.iter().enumerate();
+        owners
+            .filter(|(place, owner)| *place == 0 || owner.relief_db >= WORTH_NAMING_DB)
+            .map(|(_, owner)| owner)
     }
 
     pub fn by_power_margin_db(&self) -> f64 {

@@ -171,16 +171,12 @@ fn push_sum(text: &mut String, report: &RankReport, worst: &SumWorst) {
 
 /// The owners of a line with what the sum falls by without each.
 fn owners(row: &SumRow) -> String {
-    if row.level.nets == 1 {
-        return row
-            .level
-            .owners
-            .first()
-            .map_or(String::new(), |owner| format!("{} alone", owner.net));
-    }
-    let owners = row.level.owners.iter();
+    let owners = row.named_owners();
     let words: Vec<String> = owners
-        .map(|owner| format!("{} {:.1} dB", owner.net, owner.relief_db))
+        .map(|owner| match row.level.nets {
+            1 => format!("{} alone", owner.net),
+            _ => format!("{} {:.1} dB", owner.net, owner.relief_db),
+        })
         .collect();
     words.join(", ")
 }
@@ -245,8 +241,53 @@ fn push_foot(text: &mut String, report: &RankReport) {
         "Site: {}. margin = limit - field; chance of failing: likely fail from 50 %, marginal from 5 %, likely pass below.",
         words::site(report.site)
     );
+    if report.ranking.tally.not_judged > 0 {
+        text.push_str(
+            "not judged: no limit covers a harmonic of the net, or no part of it radiates.\n",
+        );
+    }
     text.push_str(
         "Changes are tried one at a time on nets that do not likely pass: check the timing before taking one.\n",
     );
     let _ = writeln!(text, "This is a {NOTICE}; {LABORATORY}.");
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::show::{rank_json, ranking_csv, samples};
+
+    #[test]
+    fn the_table_tells_nets_sum_and_what_was_left_out() {
+        let text = rank_table(&samples::rank_report());
+        for words in [
+            "7 nets: 1 likely fail, 0 marginal, 6 likely pass.",
+            "5 nets are as asked for.",
+            "The worst 2 of them",
+            "56 ohm in series at the driver: +9.3 dB",
+            "All nets together: likely fail (86 %), margin -6.5 dB at 144 MHz and 3 m",
+            "CAM_D 4.0 dB, B 0.5 dB",
+            "nets.csv, row 3: the net has no `name`",
+            "Did not settle",
+            NOTICE,
+        ] {
+            assert!(text.contains(words), "{words}\n{text}");
+        }
+        assert!(!text.contains("PARTIAL"));
+    }
+
+    #[test]
+    fn every_form_of_a_partial_ranking_says_so() {
+        let mut report = samples::rank_report();
+        report.ranking.of = 900;
+        assert!(rank_table(&report).contains("PARTIAL: stopped after 7 of 900 nets."));
+        assert!(rank_json(&report).contains("\"partial\": true"));
+        let csv = ranking_csv(&report);
+        let row = csv.lines().nth(1).expect("a row");
+        assert!(
+            row.starts_with("1,CAM_D,16,") && row.ends_with(",true"),
+            "{row}"
+        );
+        assert!(csv.ends_with(&format!("# notice: {NOTICE}\n")));
+    }
 }
