@@ -115,6 +115,7 @@ pub(super) fn rank_report() -> RankReport {
             },
             done: 7,
             of: 7,
+            has_all_changes: true,
         },
         unusable: vec![UnusableNet {
             name: "nets.csv, row 3".into(),

@@ -38,12 +38,14 @@ fn push_head(text: &mut String, report: &RankReport) {
         likely_pass,
         not_judged,
     } = ranking.tally;
-    if ranking.is_partial() {
+    if ranking.done < ranking.of {
         let _ = writeln!(
             text,
             "PARTIAL: stopped after {} of {} nets. What follows knows of these alone.",
             ranking.done, ranking.of
         );
+    } else if ranking.is_partial() {
+        text.push_str("PARTIAL: stopped before every change was tried.\n");
     }
     let _ = write!(
         text,

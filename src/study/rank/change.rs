@@ -71,14 +71,14 @@ pub(super) struct Patient<'a> {
     pub before: &'a Before,
 }
 
-/// The changes tried on each net, the most helpful first.
+/// The changes tried on each net, the most helpful first, and whether all of them were tried.
 pub(super) fn tried(
     patients: &[Patient],
     board: &Board,
     antenna: &dyn Antenna,
     setup: &CheckSetup,
     watch: &dyn Watch,
-) -> Vec<Vec<Change>> {
+) -> (Vec<Vec<Change>>, bool) {
     let mut changes: Vec<Vec<Change>> = Vec::with_capacity(patients.len());
     let worth: Vec<(usize, Remedy, Net)> = patients
         .iter()
@@ -95,6 +95,7 @@ pub(super) fn tried(
     for patient in patients {
         changes.push(patient.cables_quieted().into_iter().collect());
     }
+    let mut tried = 0;
     watch.begin("changes", worth.len());
     for chunk in worth.chunks(CHUNK) {
         if watch.is_stopped() {
@@ -106,13 +107,14 @@ pub(super) fn tried(
         {
             let change = patients[*number].after(*remedy, &result);
             changes[*number].extend(change);
+            tried += 1;
             watch.step();
         }
     }
     for changes in &mut changes {
         changes.sort_by(|a, b| b.gain_db.total_cmp(&a.gain_db));
     }
-    changes
+    (changes, tried == worth.len())
 }
 
 impl Patient<'_> {

@@ -43,12 +43,14 @@ pub struct Ranking {
     pub done: usize,
     /// Nets that were to be.
     pub of: usize,
+    /// Whether every change was tried that was to be.
+    pub has_all_changes: bool,
 }
 
 impl Ranking {
-    /// Whether it was stopped before every net was worked out.
+    /// Whether it was stopped before every net was worked out, or every change tried.
     pub fn is_partial(&self) -> bool {
-        self.done < self.of
+        self.done < self.of || !self.has_all_changes
     }
 }
 
@@ -151,7 +153,7 @@ pub fn rank(
         .collect();
     let kept_count = kept.len();
     kept.truncate(top.unwrap_or(usize::MAX));
-    let changes = change::tried(
+    let (changes, has_all_changes) = change::tried(
         &patients(&kept, board),
         board,
         antenna.as_ref(),
@@ -170,6 +172,7 @@ pub fn rank(
         sum: summing.finish(board, &limits, setup),
         done,
         of: order.len(),
+        has_all_changes,
     }
 }
 

@@ -306,6 +306,9 @@ fn what_is_finished_when_stopped_is_ranked_and_said_to_be_partial() {
     assert!(part.is_partial());
     assert_eq!((part.done, part.of, part.listed.len()), (CHUNK, 300, 3));
     assert!(part.sum.worst.is_some());
+    // All nets are done, but no change is tried any more.
+    let unchanged = stopped_after(300);
+    assert_eq!((unchanged.done, unchanged.is_partial()), (300, true));
     let none = stopped_after(0);
     assert_eq!((none.done, none.listed.len()), (0, 0));
     assert!(none.sum.worst.is_none());
