@@ -102,7 +102,7 @@ fn filters_choose_what_is_listed() {
     let folder = Folder::new();
     let board = board_with(
         &folder,
-        "CAM_A;strong;48;outer;4;6;input;\nCAM_B;strong;24;outer;4;6;input;\nX;strong;48;outer;4;1;input;\n",
+        "CAM_A;strong;48;outer;4;6;input;\nCAM_B;strong;24;outer;4;6;input;\nY;strong;48;outer;4;0,5;input;\n",
     );
     let names = |arguments: &[&str]| -> Vec<String> {
         let (board, _) = json(&[&["rank", &board], arguments].concat());
@@ -112,7 +112,7 @@ fn filters_choose_what_is_listed() {
     };
     assert_eq!(names(&["--net", "CAM_*"]).len(), 2);
     assert_eq!(names(&["--net", "CAM_*", "--clock", "24 MHz"]), ["CAM_B"]);
-    assert_eq!(names(&["--verdict", "likely-pass", "--net", "X"]), ["X"]);
+    assert_eq!(names(&["--verdict", "likely-pass", "--net", "Y"]), ["Y"]);
     assert!(names(&["--layer", "core"]).is_empty());
     assert_eq!(names(&["--top", "1"]).len(), 1);
     for wrong in [["--top", "0"], ["--verdict", "perhaps"], ["--clock", "48"]] {
