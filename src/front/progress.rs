@@ -3,7 +3,7 @@
 use std::sync::atomic::{AtomicBool, Ordering};
 use std::time::{Duration, Instant};
 
-use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
+use indicatif::{ProgressBar, ProgressDrawTarget, ProgressState, ProgressStyle};
 use ringfield::study::Watch;
 
 /// How far a study has come; the bar is gone when this is.
@@ -19,9 +19,9 @@ impl Progress {
     pub fn new() -> Self {
         let bar = ProgressBar::with_draw_target(None, ProgressDrawTarget::hidden());
         if let Ok(style) =
-            ProgressStyle::with_template("{bar:30} {pos} of {len} {msg}, {per_sec}, {eta} left")
+            ProgressStyle::with_template("{bar:30} {pos} of {len} {msg}, {rate}, {eta} left")
         {
-            bar.set_style(style);
+            bar.set_style(style.with_key("rate", write_rate));
         }
         Self {
             bar,
@@ -36,6 +36,14 @@ impl Progress {
         progress.stop = Some(stop);
         progress
     }
+}
+
+/// How many are done in a second, with as many digits as are of use.
+fn write_rate(state: &ProgressState, out: &mut dyn std::fmt::Write) {
+    let rate = state.per_sec();
+    let decimals = if rate < 10.0 { 1 } else { 0 };
+    // Nobody can be told of a failure here.
+    let _ = write!(out, "{rate:.decimals$} a second");
 }
 
 impl Watch for Progress {

@@ -102,13 +102,11 @@ pub(super) fn tried(
             break;
         }
         let nets: Vec<Net> = chunk.iter().map(|(_, _, net)| net.clone()).collect();
-        for ((number, remedy, _), result) in
-            chunk.iter().zip(worked_out(&nets, board, antenna, setup))
-        {
+        let results = worked_out(&nets, board, antenna, setup, watch);
+        for ((number, remedy, _), result) in chunk.iter().zip(results) {
             let change = patients[*number].after(*remedy, &result);
             changes[*number].extend(change);
             tried += 1;
-            watch.step();
         }
     }
     for changes in &mut changes {

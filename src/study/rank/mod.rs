@@ -131,13 +131,10 @@ pub fn rank(
             break;
         }
         let nets: Vec<Net> = chunk.iter().map(|&net| board.nets[net].clone()).collect();
-        for (&number, result) in chunk
-            .iter()
-            .zip(worked_out(&nets, board, antenna.as_ref(), setup))
-        {
+        let results = worked_out(&nets, board, antenna.as_ref(), setup, watch);
+        for (&number, result) in chunk.iter().zip(results) {
             summing.add(number, &board.nets[number], &result);
             summaries.push(summary(number, result, &limits));
-            watch.step();
         }
     }
     let by_name = |net: usize| board.nets[net].name.as_str();
@@ -209,14 +206,26 @@ fn antenna(
     board_antenna(board, &rung, setup, watch)
 }
 
-/// Fields and margins of some nets.
+/// Tells of the steps within a stretch that has begun elsewhere.
+struct StepsOf<'a>(&'a dyn Watch);
+
+impl Watch for StepsOf<'_> {
+    fn begin(&self, _: &'static str, _: usize) {}
+
+    fn step(&self) {
+        self.0.step();
+    }
+}
+
+/// Fields and margins of some nets; the ringing, which takes most of the time, is watched.
 fn worked_out(
     nets: &[Net],
     board: &Board,
     antenna: &dyn Antenna,
     setup: &CheckSetup,
+    watch: &dyn Watch,
 ) -> Vec<NetResult> {
-    let rung = ring_all(nets, board, setup, &Unwatched);
+    let rung = ring_all(nets, board, setup, &StepsOf(watch));
     judge_all(antenna, rung, setup, &Unwatched)
 }
 

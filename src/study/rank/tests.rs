@@ -114,7 +114,7 @@ fn unequal_nets_of_one_source_add_their_fields() {
 fn ranked_result() -> NetResult {
     let board = board(&[net("A", "")]);
     let antenna = antenna(&board, &[0], &setup(), &Unwatched);
-    worked_out(&board.nets, &board, antenna.as_ref(), &setup()).remove(0)
+    worked_out(&board.nets, &board, antenna.as_ref(), &setup(), &Unwatched).remove(0)
 }
 
 #[test]
