@@ -7,6 +7,11 @@ pub trait Watch: Sync {
 
     /// One of them is done.
     fn step(&self);
+
+    /// Whether to stop with what is finished, where the study can.
+    fn is_stopped(&self) -> bool {
+        false
+    }
 }
 
 /// Tells nobody.

@@ -6,7 +6,10 @@
 mod read;
 mod rewrite;
 
-pub use read::{NamedTolerance, Reading, UnusableNet, VariedNet, VariedNets, read_board};
+pub use read::{
+    NamedTolerance, Reading, TableText, UnusableNet, VariedNet, VariedNets, read_board,
+    read_board_and_tables,
+};
 pub use rewrite::{RewriteError, rewrite_board};
 
 use std::sync::Arc;
@@ -288,6 +291,50 @@ pub struct Net {
     pub edge_distance_m: Option<f64>,
     /// Which way the path runs where no points are given.
     pub along: Along,
+    /// How many lines it stands for, and what they keep step with.
+    pub group: Group,
+}
+
+/// How many lines a net stands for, and what they keep step with.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Group {
+    /// Number of lines alike, such as those of a bus; one or more.
+    pub count: u32,
+    /// Name of the clock source, where the file gives one; nets without one keep step with all others of their clock.
+    pub clock_source: Option<Arc<str>>,
+    /// Whether they keep step.
+    pub phase: Phase,
+}
+
+impl Default for Group {
+    fn default() -> Self {
+        Self {
+            count: 1,
+            clock_source: None,
+            phase: Phase::Locked,
+        }
+    }
+}
+
+impl Group {
+    /// What the field of one line is multiplied by. Lines in step add up their fields, others their powers: 20 or
+    /// 10 log of their number in dB.
+    pub fn gain(&self) -> f64 {
+        match self.phase {
+            Phase::Locked => f64::from(self.count),
+            Phase::Independent => f64::from(self.count).sqrt(),
+        }
+    }
+}
+
+/// Whether lines keep step with one another.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub enum Phase {
+    /// They switch together, or may: the worst case is assumed.
+    #[default]
+    Locked,
+    /// They do not keep step with anything.
+    Independent,
 }
 
 /// Which way a path without points runs.

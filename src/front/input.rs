@@ -4,6 +4,7 @@ use std::fs::File;
 use std::io::Read;
 use std::path::{Path, PathBuf};
 
+use ringfield::board::{Reading, TableText, read_board_and_tables};
 use ringfield::limit::{Limit, read_limit};
 
 use super::Refusal;
@@ -47,6 +48,29 @@ pub fn read_text(path: &Path) -> Result<String, Refusal> {
         let line = sound.iter().filter(|byte| **byte == b'\n').count() + 1;
         Refusal::new(format!("`{name}` is not UTF-8 text: see line {line}"))
     })
+}
+
+/// A board file and the tables it names, which lie beside it.
+pub fn board(path: &Path) -> Result<Reading, Refusal> {
+    let text = read_text(path)?;
+    let table = |name: &str| {
+        let path = path.with_file_name(name);
+        match read_text(&path) {
+            Ok(text) => Ok(TableText {
+                name: path.display().to_string(),
+                text,
+            }),
+            Err(Refusal(messages)) => {
+                let reason = messages.first().map_or("", String::as_str);
+                Err(reason.trim_start_matches("error: ").to_owned())
+            }
+        }
+    };
+    Ok(read_board_and_tables(
+        &text,
+        &path.display().to_string(),
+        &table,
+    ))
 }
 
 /// The limits of the files given.

@@ -3,12 +3,14 @@
 pub mod check;
 pub mod compare;
 mod input;
+mod interrupt;
 pub mod limits;
 mod options;
 mod output;
 mod pictures;
 mod progress;
 mod question;
+pub mod rank;
 pub mod remedy;
 
 use std::process::ExitCode;
@@ -32,6 +34,8 @@ pub struct Arguments {
 pub enum Command {
     /// Tell which nets of a board will likely fail
     Check(check::Options),
+    /// Rank the nets of a whole board, and add up what they make together
+    Rank(rank::Options),
     /// Hold a net against itself under other terminations, edges or layouts
     Compare(compare::Options),
     /// Find what to solder in, for every net that does not likely pass

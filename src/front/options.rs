@@ -70,6 +70,11 @@ pub fn frequency(text: &str) -> Result<f64, String> {
     )
 }
 
+/// A clock.
+pub fn frequency_of_clock(text: &str) -> Result<f64, String> {
+    quantity(text, Dimension::Frequency)
+}
+
 /// A standard deviation in dB; the unit may be left out.
 pub fn decibels(text: &str) -> Result<f64, String> {
     decibels_from_0_to_40(text, "a spread from 0 dB to 40 dB was expected")

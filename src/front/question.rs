@@ -3,7 +3,7 @@
 use std::path::{Path, PathBuf};
 
 use clap::Args;
-use ringfield::board::{Board, Reading, UnusableNet, VariedNets, read_board};
+use ringfield::board::{Board, Reading, UnusableNet, VariedNets};
 use ringfield::limit::{Limit, LimitAt, default_limits, limits_at};
 use ringfield::radiation::{COMPARED_TO_HZ, Heights, Site, UNKNOWN_CABLE_LENGTHS_M};
 use ringfield::study::{CheckSetup, cable_objection, scan_band_hz};
@@ -104,18 +104,9 @@ impl Question {
         (lowest_frequency_hz, top_frequency_hz): (f64, f64),
         limits: Vec<Limit>,
     ) -> CheckSetup {
-        let mut distances_m = Vec::new();
-        for distance_m in &self.distance {
-            if !distances_m.contains(distance_m) {
-                distances_m.push(*distance_m);
-            }
-        }
-        if distances_m.is_empty() {
-            distances_m = USUAL_DISTANCES_M.into();
-        }
         CheckSetup {
             limits,
-            distances_m,
+            distances_m: distances_m(&self.distance),
             site: self.site.into(),
             heights: Heights {
                 table_m: self.table_height,
@@ -151,17 +142,31 @@ impl Asked {
     }
 }
 
+/// The distances asked for, each once.
+pub fn distances_m(asked: &[f64]) -> Vec<f64> {
+    let mut distances_m: Vec<f64> = Vec::new();
+    for distance_m in asked {
+        if !distances_m.contains(distance_m) {
+            distances_m.push(*distance_m);
+        }
+    }
+    if distances_m.is_empty() {
+        distances_m = USUAL_DISTANCES_M.into();
+    }
+    distances_m
+}
+
 /// Reads the board file and passes on what there is to say about it.
 pub fn read(path: &Path) -> Result<Reading, Refusal> {
-    let text = input::read_text(path)?;
-    let reading = read_board(&text, &path.display().to_string());
+    let reading = input::board(path)?;
     for diagnostic in &reading.diagnostics {
         output::tell(&diagnostic.render());
     }
     Ok(reading)
 }
 
-fn has_errors(reading: &Reading) -> bool {
+/// Whether the file has mistakes.
+pub fn has_errors(reading: &Reading) -> bool {
     let mut diagnostics = reading.diagnostics.iter();
     diagnostics.any(|diagnostic| diagnostic.severity == Severity::Error)
 }
@@ -202,7 +207,7 @@ fn unknown_net(name: &str, known: &[&str]) -> String {
 }
 
 /// What has to be said of frequencies at which nothing was compared.
-fn beyond_comparison(board: &Board, setup: &CheckSetup) -> Option<String> {
+pub fn beyond_comparison(board: &Board, setup: &CheckSetup) -> Option<String> {
     (board.plane.is_some() && setup.top_frequency_hz > COMPARED_TO_HZ).then(|| {
         "Above 2 GHz the plane's and the cables' part in the figures has not been compared with any \
          other solution."
@@ -211,7 +216,7 @@ fn beyond_comparison(board: &Board, setup: &CheckSetup) -> Option<String> {
 }
 
 /// What has to be said about the cables.
-fn cable_remarks(board: &Board, site: Site) -> Vec<String> {
+pub fn cable_remarks(board: &Board, site: Site) -> Vec<String> {
     let Some(cables) = board.cables.as_deref() else {
         return vec![
             "The file does not say what hangs on the board (`cables: []` says that nothing does), \

@@ -396,7 +396,7 @@ fn is_mirrored(network: &Network, pace: &Pace, middle_v: f64) -> bool {
         && network.source.is_mirrored(network.period_s)
         && clamps
             .into_iter()
-            .all(|clamps| clamps.from_middle(middle_v).is_odd())
+            .all(|clamps| clamps.with_middle(middle_v).is_odd())
         && rails.into_iter().all(|rail_v| rail_v == middle_v)
 }
 
@@ -499,7 +499,7 @@ fn clusters(
                 .iter()
                 .filter(|input| input.clamps.any() && nodes.contains(&input.node))
                 .map(|input| {
-                    let clamps = input.clamps.from_middle(middle_v);
+                    let clamps = input.clamps.with_middle(middle_v);
                     (input.node, Load::Clamps(clamps))
                 })
                 .collect();

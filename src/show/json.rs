@@ -6,8 +6,10 @@ use serde::Serialize;
 
 use super::spread::{SpreadEntry, spread_entry};
 use super::{CheckReport, NOTICE, words};
+use crate::board::UnusableNet;
+use crate::limit::LimitAt;
 use crate::radiation::Aim;
-use crate::study::{ClampSignal, Harmonic, NetResult, ReceiverSignal, Signal};
+use crate::study::{ClampSignal, Harmonic, NetResult, ReceiverSignal, Signal, Worst};
 
 /// The whole report as one JSON object; a number that is not finite is `null`.
 pub fn check_json(report: &CheckReport) -> String {
@@ -20,30 +22,40 @@ pub(super) fn document<Entry: Serialize>(report: &CheckReport, nets: Vec<Entry>)
         notice: NOTICE,
         board: &report.board,
         site: words::site(report.site),
-        limits: report
-            .limits
-            .iter()
-            .map(|limit| LimitEntry {
-                title: &limit.title,
-                distance_m: limit.distance_m,
-                note: limit.note(),
-            })
-            .collect(),
+        limits: limit_entries(&report.limits),
         remarks: &report.remarks,
         nets,
-        unusable: report
-            .unusable
-            .iter()
-            .map(|net| UnusableEntry {
-                name: &net.name,
-                reason: &net.reason,
-            })
-            .collect(),
+        unusable: unusable_entries(&report.unusable),
     };
-    let mut text = serde_json::to_string_pretty(&document)
+    text(&document)
+}
+
+/// A document as text.
+pub(super) fn text(document: &impl Serialize) -> String {
+    let mut text = serde_json::to_string_pretty(document)
         .expect("plain structs with text keys always serialise");
     text.push('\n');
     text
+}
+
+pub(super) fn limit_entries(limits: &[LimitAt]) -> Vec<LimitEntry<'_>> {
+    limits
+        .iter()
+        .map(|limit| LimitEntry {
+            title: &limit.title,
+            distance_m: limit.distance_m,
+            note: limit.note(),
+        })
+        .collect()
+}
+
+pub(super) fn unusable_entries(nets: &[UnusableNet]) -> Vec<UnusableEntry<'_>> {
+    nets.iter()
+        .map(|net| UnusableEntry {
+            name: &net.name,
+            reason: &net.reason,
+        })
+        .collect()
 }
 
 #[derive(Serialize)]
@@ -58,14 +70,14 @@ struct Document<'a, Entry> {
 }
 
 #[derive(Serialize)]
-struct LimitEntry<'a> {
+pub(super) struct LimitEntry<'a> {
     title: &'a str,
     distance_m: f64,
     note: Option<String>,
 }
 
 #[derive(Serialize)]
-struct UnusableEntry<'a> {
+pub(super) struct UnusableEntry<'a> {
     name: &'a str,
     reason: &'a str,
 }
@@ -85,7 +97,7 @@ pub(super) struct NetEntry<'a> {
 }
 
 #[derive(Serialize)]
-struct WorstEntry<'a> {
+pub(super) struct WorstEntry<'a> {
     limit: &'a str,
     harmonic: usize,
     frequency_hz: f64,
@@ -173,17 +185,7 @@ pub(super) fn net_entry(net: &NetResult) -> NetEntry<'_> {
         clock_hz: net.clock_hz,
         verdict: net.verdict.as_str(),
         chance_of_failing: net.chance_of_failing,
-        worst: net.worst.as_ref().map(|worst| WorstEntry {
-            limit: &worst.limit,
-            harmonic: worst.harmonic,
-            frequency_hz: worst.frequency_hz,
-            distance_m: worst.distance_m,
-            field_dbuv_per_m: worst.field_dbuv_per_m,
-            limit_dbuv_per_m: worst.limit_dbuv_per_m,
-            margin_db: worst.margin_db,
-            mainly: worst.mechanism.as_str(),
-            antenna: worst.aim.map(aim_entry),
-        }),
+        worst: net.worst.as_ref().map(worst_entry),
         harmonics: net
             .harmonics
             .iter()
@@ -192,6 +194,20 @@ pub(super) fn net_entry(net: &NetResult) -> NetEntry<'_> {
         signal: signal_entry(&net.signal),
         warnings: &net.warnings,
         spread: net.spread.as_ref().map(spread_entry),
+    }
+}
+
+pub(super) fn worst_entry(worst: &Worst) -> WorstEntry<'_> {
+    WorstEntry {
+        limit: &worst.limit,
+        harmonic: worst.harmonic,
+        frequency_hz: worst.frequency_hz,
+        distance_m: worst.distance_m,
+        field_dbuv_per_m: worst.field_dbuv_per_m,
+        limit_dbuv_per_m: worst.limit_dbuv_per_m,
+        margin_db: worst.margin_db,
+        mainly: worst.mechanism.as_str(),
+        antenna: worst.aim.map(aim_entry),
     }
 }
 

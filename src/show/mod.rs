@@ -9,6 +9,7 @@ mod findings;
 mod json;
 mod limit_listing;
 mod plot;
+mod rank;
 mod remedy;
 #[cfg(test)]
 mod samples;
@@ -24,9 +25,10 @@ pub use explain::explanations_text;
 pub use json::check_json;
 pub use limit_listing::{limit_at_listing, limit_listing};
 pub use plot::{
-    Picture, spectrum_picture, sweep_picture, variants_spectrum_picture, variants_waveform_picture,
-    waveform_picture,
+    Picture, board_spectrum_picture, ranking_picture, spectrum_picture, sweep_picture,
+    variants_spectrum_picture, variants_waveform_picture, waveform_picture,
 };
+pub use rank::{RankReport, rank_json, rank_table, ranking_csv};
 pub use remedy::{RemedyReport, remedy_csv, remedy_json, remedy_table};
 pub use table::{check_table, march_table};
 pub use words::distance;

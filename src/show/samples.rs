@@ -5,11 +5,11 @@ use crate::limit::{Band, Detector, Limit, LimitAt, limits_at};
 use crate::radiation::{Aim, Polarisation, Site};
 use crate::ringing::{MarchReport, Pace, SettledWaveform, Stretch};
 use crate::study::{
-    ClampSignal, FieldReading, Harmonic, Mechanism, NetResult, ReceiverSignal, Signal, Verdict,
-    Worst,
+    BoardSum, Change, ClampSignal, FieldReading, Harmonic, Mechanism, NetResult, Owner, RankedNet,
+    Ranking, ReceiverSignal, Remedy, Signal, SumLevel, SumLine, SumWorst, Tally, Verdict, Worst,
 };
 
-use super::CheckReport;
+use super::{CheckReport, RankReport};
 
 pub(super) const DISTANCES_M: [f64; 2] = [3.0, 10.0];
 const STEPS: usize = 4096;
@@ -63,6 +63,103 @@ pub(super) fn report(nets: Vec<NetResult>) -> CheckReport {
             reason: "it has no path".into(),
         }],
         remarks: vec!["The file does not say what hangs on the board.".into()],
+    }
+}
+
+/// A ranking of two nets out of seven, with a sum of two lines.
+pub(super) fn rank_report() -> RankReport {
+    let level = |field_dbuv_per_m: f64| SumLevel {
+        field_dbuv_per_m,
+        by_power_dbuv_per_m: field_dbuv_per_m - 3.0,
+        nets: 7,
+        owners: vec![
+            owner("CAM_D", field_dbuv_per_m - 1.0, 4.0),
+            owner("B", 20.0, 0.5),
+        ],
+    };
+    let line = |frequency_hz: f64, field_dbuv_per_m: f64| SumLine {
+        frequency_hz,
+        levels: vec![
+            Some(level(field_dbuv_per_m)),
+            Some(level(field_dbuv_per_m - 10.0)),
+        ],
+    };
+    RankReport {
+        board: "Brackwater buoy controller, revision C".into(),
+        site: Site::OpenArea,
+        distances_m: DISTANCES_M.into(),
+        limits: limits_at_both_distances().into(),
+        ranking: Ranking {
+            listed: vec![ranked("CAM_D", -5.0, 16), ranked("B", 12.0, 1)],
+            kept: 5,
+            tally: Tally {
+                likely_fail: 1,
+                marginal: 0,
+                likely_pass: 6,
+                not_judged: 0,
+            },
+            unsettled: vec!["B".into()],
+            sum: BoardSum {
+                lines: vec![line(48e6, 30.0), line(144e6, 50.0)],
+                worst: Some(SumWorst {
+                    limit: "47 CFR 15.109 class B".into(),
+                    frequency_hz: 144e6,
+                    distance_m: 3.0,
+                    limit_dbuv_per_m: 43.5,
+                    margin_db: -6.5,
+                    sigma_db: 5.9,
+                    chance_of_failing: 0.86,
+                    verdict: Verdict::LikelyFail,
+                    level: level(50.0),
+                }),
+            },
+            done: 7,
+            of: 7,
+            has_all_changes: true,
+        },
+        unusable: vec![UnusableNet {
+            name: "nets.csv, row 3".into(),
+            reason: "the net has no `name`".into(),
+        }],
+        remarks: Vec::new(),
+    }
+}
+
+fn owner(net: &str, field_dbuv_per_m: f64, relief_db: f64) -> Owner {
+    Owner {
+        net: net.into(),
+        field_dbuv_per_m,
+        relief_db,
+    }
+}
+
+fn ranked(name: &str, margin_db: f64, count: u32) -> RankedNet {
+    let change = Change {
+        remedy: Remedy::SeriesResistor {
+            resistance_ohm: 56.0,
+        },
+        margin_db: margin_db + 9.3,
+        gain_db: 9.3,
+    };
+    let fails = margin_db < 0.0;
+    RankedNet {
+        place: 1,
+        name: name.into(),
+        clock_hz: 48e6,
+        clock_source: None,
+        count,
+        layers: vec!["outer".into()],
+        verdict: if fails {
+            Verdict::LikelyFail
+        } else {
+            Verdict::LikelyPass
+        },
+        chance_of_failing: Some(if fails { 0.8 } else { 0.02 }),
+        worst: worst(margin_db),
+        spread: None,
+        sigma_db: 5.9,
+        changes: if fails { vec![change] } else { Vec::new() },
+        warnings: Vec::new(),
     }
 }
 

@@ -5,19 +5,20 @@ use std::fmt::Write as _;
 use serde::Serialize;
 
 use super::table::plain_table;
-use crate::study::{Carried, MarginSpread, NetResult, Spread};
+use crate::study::{Carried, MarginSpread, Spread};
 
 /// Most tolerances named in a row, and the least share that is.
 const NAMED: usize = 3;
 const LEAST_SHARE: f64 = 0.01;
 
-/// The table of spreads, in the order of the nets; nothing where no tolerance was drawn.
-pub(super) fn push_spreads(text: &mut String, nets: &[&NetResult]) {
-    let spreads: Vec<(&NetResult, &Spread)> = nets
-        .iter()
-        .filter_map(|net| Some((*net, net.spread.as_ref()?)))
-        .collect();
-    let Some((_, first)) = spreads.first() else {
+/// The table of spreads of nets with their names and nominal margins, in the order given; nothing where no tolerance was
+/// drawn.
+pub(super) fn push_spreads<'n>(
+    text: &mut String,
+    spreads: impl Iterator<Item = (&'n str, Option<f64>, &'n Spread)>,
+) {
+    let spreads: Vec<_> = spreads.collect();
+    let Some((_, _, first)) = spreads.first() else {
         return;
     };
     let header = [
@@ -30,9 +31,8 @@ pub(super) fn push_spreads(text: &mut String, nets: &[&NetResult]) {
         "carried by",
     ];
     let mut table = plain_table(&header, &[1, 2, 3, 4, 5]);
-    for (net, spread) in &spreads {
-        let nominal = net.worst.as_ref().map(|worst| worst.margin_db);
-        let mut cells = vec![net.name.clone(), nominal.map_or("-".into(), decibels)];
+    for (name, nominal, spread) in &spreads {
+        let mut cells = vec![(*name).to_owned(), nominal.map_or("-".into(), decibels)];
         match &spread.margins {
             Some(margins) => cells.extend(figures(margins)),
             None => cells.extend(["-"; 5].map(String::from)),
@@ -48,12 +48,12 @@ pub(super) fn push_spreads(text: &mut String, nets: &[&NetResult]) {
         text.push_str(line.trim_end());
         text.push('\n');
     }
-    for (net, spread) in spreads {
+    for (name, _, spread) in spreads {
         if let Some(reason) = &spread.first_failure {
             let _ = writeln!(
                 text,
-                "  {}: {} of {} draws are left out, the first because {reason}",
-                net.name, spread.failed, spread.draws
+                "  {name}: {} of {} draws are left out, the first because {reason}",
+                spread.failed, spread.draws
             );
         }
     }
@@ -141,7 +141,13 @@ pub(super) fn spread_entry(spread: &Spread) -> SpreadEntry<'_> {
 mod tests {
     use super::*;
     use crate::show::samples;
-    use crate::study::CarriedBy;
+    use crate::study::{CarriedBy, NetResult};
+
+    fn spreads(net: &NetResult) -> impl Iterator<Item = (&str, Option<f64>, &Spread)> {
+        let nominal_db = net.worst.as_ref().map(|worst| worst.margin_db);
+        let spread = net.spread.iter();
+        spread.map(move |spread| (net.name.as_str(), nominal_db, spread))
+    }
 
     fn net() -> NetResult {
         let by = |(name, share): (&str, f64)| CarriedBy {
@@ -178,7 +184,7 @@ mod tests {
     #[test]
     fn a_row_names_what_carries_the_spread() {
         let mut text = String::new();
-        push_spreads(&mut text, &[&net()]);
+        push_spreads(&mut text, spreads(&net()));
         let row = text
             .lines()
             .find(|line| line.starts_with("CAM_PCLK"))
@@ -196,7 +202,7 @@ mod tests {
     #[test]
     fn nothing_is_said_where_nothing_was_drawn() {
         let mut text = String::new();
-        push_spreads(&mut text, &[&samples::net("CAM_PCLK", 48e6, 20)]);
+        push_spreads(&mut text, spreads(&samples::net("CAM_PCLK", 48e6, 20)));
         assert_eq!(text, "");
     }
 

@@ -45,7 +45,11 @@ pub fn check_table(report: &CheckReport) -> String {
         }
         text.push('\n');
     }
-    push_spreads(&mut text, &nets);
+    let spreads = nets.iter().filter_map(|net| {
+        let nominal_db = net.worst.as_ref().map(|worst| worst.margin_db);
+        Some((net.name.as_str(), nominal_db, net.spread.as_ref()?))
+    });
+    push_spreads(&mut text, spreads);
     push_aims(&mut text, &nets);
     push_findings(&mut text, &nets);
     push_unusable(&mut text, report);

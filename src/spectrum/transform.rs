@@ -5,14 +5,34 @@ use num_complex::Complex64;
 use realfft::{RealFftPlanner, RealToComplex};
 use rustfft::{Fft, FftPlanner};
 use std::cell::RefCell;
+use std::collections::HashMap;
 use std::f64::consts::{PI, SQRT_2};
 use std::ops::RangeInclusive;
 use std::sync::Arc;
 
+type Real = Arc<dyn RealToComplex<f64>>;
+type ThereAndBack = [Arc<dyn Fft<f64>>; 2];
+
+// Plans are dear to make and the same for every net of one clock. Each is made by a planner of its own: one that has
+// made others builds on them, and the last digits of a net would depend on which nets its thread had before.
 thread_local! {
-    /// Plans are dear to make and the same for every net of one clock.
-    static REAL: RefCell<RealFftPlanner<f64>> = RefCell::new(RealFftPlanner::new());
-    static COMPLEX: RefCell<FftPlanner<f64>> = RefCell::new(FftPlanner::new());
+    static REAL: RefCell<HashMap<usize, Real>> = RefCell::default();
+    static COMPLEX: RefCell<HashMap<usize, ThereAndBack>> = RefCell::default();
+}
+
+fn real_plan(length: usize) -> Real {
+    let make = || RealFftPlanner::new().plan_fft_forward(length);
+    REAL.with_borrow_mut(|plans| Arc::clone(plans.entry(length).or_insert_with(make)))
+}
+
+fn complex_plans(length: usize) -> ThereAndBack {
+    let make = || {
+        [
+            FftPlanner::new().plan_fft_forward(length),
+            FftPlanner::new().plan_fft_inverse(length),
+        ]
+    };
+    COMPLEX.with_borrow_mut(|plans| plans.entry(length).or_insert_with(make).clone())
 }
 
 /// Gives the rms phasors of some harmonics of periods of one pace.
@@ -45,7 +65,7 @@ impl Transform {
 
 /// The transform of even steps.
 pub(super) struct Even {
-    plan: Arc<dyn RealToComplex<f64>>,
+    plan: Real,
     input: Vec<f64>,
     bins: Vec<Complex64>,
     scratch: Vec<Complex64>,
@@ -54,7 +74,7 @@ pub(super) struct Even {
 
 impl Even {
     fn new(length: usize, harmonics: RangeInclusive<usize>) -> Self {
-        let plan = REAL.with_borrow_mut(|planner| planner.plan_fft_forward(length));
+        let plan = real_plan(length);
         Self {
             input: plan.make_input_vec(),
             bins: plan.make_output_vec(),
@@ -96,12 +116,7 @@ impl Stretches {
         let count = harmonics.end() + 1 - harmonics.start();
         let longest = pace.high.marched.max(pace.low.marched);
         let size = (longest + count).next_power_of_two();
-        let (forward, inverse) = COMPLEX.with_borrow_mut(|planner| {
-            (
-                planner.plan_fft_forward(size),
-                planner.plan_fft_inverse(size),
-            )
-        });
+        let [forward, inverse] = complex_plans(size);
         let mut chirp_bins = vec![Complex64::ZERO; size];
         for (k, bin) in chirp_bins.iter_mut().enumerate().take(count) {
             *bin = half_turns(k * k, pace.total());

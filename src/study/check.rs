@@ -5,7 +5,7 @@ use super::explain::Piece;
 use super::signal::signal;
 use super::verdict::{Verdict, chance_of_failing, total_sigma_db};
 use super::{FieldReading, Harmonic, NetResult, Worst};
-use crate::board::{Board, Net};
+use crate::board::{Board, Group, Net, Phase};
 use crate::limit::{Limit, LimitAt, limits_at};
 use crate::radiation::{
     self, Antenna, Footing, Heights, LargePlane, Layout, LitNet, LitSegment, OwnPlane, Reading,
@@ -67,6 +67,8 @@ pub struct RungNet {
     settled: Settled,
     spectrum: Spectrum,
     layout: Layout,
+    /// What the field of one line is multiplied by.
+    gain: f64,
     warnings: Vec<String>,
 }
 
@@ -83,14 +85,30 @@ pub fn ring(net: &Net, board: &Board, setup: &CheckSetup) -> RungNet {
     let layout = Layout::of(&network, net, board.plane.as_ref());
     let mut warnings = warnings(&network, &layout, &settled, &spectrum);
     warnings.extend(board.plane.and_then(|plane| layout.place_warning(&plane)));
+    warnings.extend(group_remark(&net.group));
     RungNet {
         name: net.name.clone(),
         network,
         settled,
         spectrum,
         layout,
+        gain: net.group.gain(),
         warnings,
     }
+}
+
+/// What has to be said of a net that stands for several lines.
+fn group_remark(group: &Group) -> Option<String> {
+    let (step, count) = match group.phase {
+        Phase::Locked => ("in step, their worst case", group.count),
+        Phase::Independent => ("out of step, added by power", group.count),
+    };
+    (count > 1).then(|| {
+        format!(
+            "stands for {count} lines: its field is that of all of them {step} ({:+.1} dB)",
+            20.0 * group.gain().log10()
+        )
+    })
 }
 
 /// Ringing and spectrum of several nets, in their order.
@@ -269,7 +287,8 @@ pub(super) fn segment_readings(
     let without = (0..whole.len()).map(|piece| only(&|number| number != piece));
     let nets: Vec<LitNet> = alone.chain(without).collect();
     let readings = antenna.readings(frequency_hz, &nets);
-    let level = |number: usize| level_dbuv_per_m(readings[number][distance].field_v_per_m);
+    let level =
+        |number: usize| level_dbuv_per_m(net.gain * readings[number][distance].field_v_per_m);
     let piece = |(number, lit): (usize, &LitSegment)| {
         let segment = lit.segment;
         let half = (-lit.propagation_per_m * segment.length_m / 2.0).exp();
@@ -323,15 +342,16 @@ fn harmonics(net: &RungNet, readings: &[Vec<Reading>], setup: &CheckSetup) -> Ve
             let frequency_hz = spectrum.frequency_hz(place);
             let driver_current_a = spectrum.driver_a[place].norm();
             let reading = |(&distance_m, reading): (&f64, &Reading)| {
+                let level = |field_v_per_m: f64| level_dbuv_per_m(net.gain * field_v_per_m);
                 let loop_v_per_m =
                     loop_area_v_per_m(frequency_hz, area_m2, driver_current_a, distance_m);
                 FieldReading {
                     distance_m,
-                    field_dbuv_per_m: level_dbuv_per_m(reading.field_v_per_m),
-                    loop_area_dbuv_per_m: level_dbuv_per_m(loop_v_per_m),
-                    loops_dbuv_per_m: level_dbuv_per_m(reading.loops_v_per_m),
-                    charges_dbuv_per_m: level_dbuv_per_m(reading.charges_v_per_m),
-                    cable_dbuv_per_m: reading.cables_v_per_m.and_then(level_dbuv_per_m),
+                    field_dbuv_per_m: level(reading.field_v_per_m),
+                    loop_area_dbuv_per_m: level(loop_v_per_m),
+                    loops_dbuv_per_m: level(reading.loops_v_per_m),
+                    charges_dbuv_per_m: level(reading.charges_v_per_m),
+                    cable_dbuv_per_m: reading.cables_v_per_m.and_then(level),
                     aim: reading.aim,
                 }
             };

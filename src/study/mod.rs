@@ -5,6 +5,7 @@ pub mod change;
 mod check;
 pub mod compare;
 pub mod explain;
+mod rank;
 pub mod remedy;
 mod signal;
 mod tolerance;
@@ -15,6 +16,10 @@ pub use crate::watch::{Unwatched, Watch};
 pub use band::scan_band_hz;
 pub use check::{
     CheckSetup, RungNet, board_antenna, cable_objection, check, judge_all, ring, ring_all,
+};
+pub use rank::{
+    BoardSum, Change, Filter, OWNERS_NAMED, Owner, RankedNet, Ranking, Remedy, SumLevel, SumLine,
+    SumWorst, Tally, rank,
 };
 pub use signal::{ClampSignal, ReceiverSignal, Signal};
 pub use tolerance::{

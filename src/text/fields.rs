@@ -83,6 +83,11 @@ impl<'d> Report<'d> {
         self.diagnostics.into_inner()
     }
 
+    /// Name of the file; empty in a reading with other values than the nominal ones.
+    pub fn file(&self) -> &str {
+        self.document.map_or("", |document| document.file)
+    }
+
     /// Whether any error was reported.
     pub fn has_errors(&self) -> bool {
         self.diagnostics

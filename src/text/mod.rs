@@ -4,6 +4,7 @@ mod diagnostic;
 mod draw;
 mod fields;
 mod quantity;
+mod table;
 mod written;
 mod yaml;
 
@@ -14,5 +15,6 @@ pub use fields::{Fields, Range, Report, alternatives};
 pub use quantity::{
     Dimension, Distribution, QuantityError, Stated, Tolerance, parse_quantity, parse_stated,
 };
+pub use table::{Cell, RowError, RowStart, Table};
 pub use written::{farads, henries, metres, ohms, seconds, volts};
 pub use yaml::{Document, Key, Located, Node, Value, parse_yaml};

@@ -1,7 +1,7 @@
 //! Boards in few words.
 
 use ringfield::board::{
-    Along, Clamp, DirectLine, Driver, EdgeShape, HighClamp, Layer, Net, PathItem, Receiver,
+    Along, Clamp, DirectLine, Driver, EdgeShape, Group, HighClamp, Layer, Net, PathItem, Receiver,
     ReceiverPart, Series, Shunt, Thresholds, Trace, Via,
 };
 use std::sync::Arc;
@@ -34,6 +34,7 @@ pub fn net(name: &str, driver: Driver, clock_hz: f64, path: Vec<PathItem>) -> Ne
         path,
         edge_distance_m: None,
         along: Along::Length,
+        group: Group::default(),
     }
 }
 

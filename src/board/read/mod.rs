@@ -6,19 +6,28 @@ mod definitions;
 mod net;
 mod parts;
 mod path;
+mod table;
 mod varied;
 
 use std::collections::{BTreeMap, HashMap, HashSet};
+use std::sync::Arc;
 
 use super::Board;
-use crate::text::{Diagnostic, Fields, Key, Node, Noted, Report, Value, alternatives, parse_yaml};
+use crate::text::{
+    Diagnostic, Document, Fields, Key, Node, Noted, Report, RowStart, Value, alternatives,
+    parse_yaml,
+};
 use definitions::Definitions;
+use table::NetTable;
 
 pub use varied::{NamedTolerance, VariedNet, VariedNets};
 
 /// Why plane and cables have no tolerances.
 const ONE_ANTENNA: &str =
     "plane and cables are the antenna, which is worked out once for all draws";
+/// Why tables have none.
+const NONE_IN_TABLES: &str =
+    "rows of a table have none; the layers, drivers and receivers that they name may";
 
 /// What a board file holds.
 #[derive(Debug, Clone, PartialEq)]
@@ -42,11 +51,30 @@ pub struct UnusableNet {
     pub reason: String,
 }
 
+/// A table of nets that a board file names.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct TableText {
+    /// What to call it in messages.
+    pub name: String,
+    /// All of it.
+    pub text: String,
+}
+
+/// Hands out the table of a name that the board file gives, or says why it cannot.
+type Tables<'t> = &'t dyn Fn(&str) -> Result<TableText, String>;
+
 /// Reads a board file. Never fails as a whole: what cannot be used is left out and said.
 ///
 /// A mistake within a net costs that net; one within a driver, layer or receiver costs the nets that use it; any other
-/// costs the board.
+/// costs the board. A table of nets is refused: see [`read_board_and_tables`].
 pub fn read_board(text: &str, file_name: &str) -> Reading {
+    read_board_and_tables(text, file_name, &|_| Err("no tables are at hand".into()))
+}
+
+/// Reads a board file as [`read_board`] does, and the tables of nets it names.
+///
+/// `tables` hands out the table of a name. A mistake in a row costs that net, one in a table's header all of its nets.
+pub fn read_board_and_tables(text: &str, file_name: &str, tables: Tables) -> Reading {
     let document = match parse_yaml(text, file_name) {
         Ok(document) => document,
         Err(error) => {
@@ -59,21 +87,32 @@ pub fn read_board(text: &str, file_name: &str) -> Reading {
         }
     };
     let report = Report::new(&document);
-    let mut unusable = Vec::new();
-    let (board, varied) = board(&report, &document.root, file_name, &mut unusable).unzip();
+    let mut left = LeftOut::default();
+    let (board, varied) = board(&report, &document.root, file_name, tables, &mut left).unzip();
+    let mut diagnostics = report.into_diagnostics();
+    diagnostics.extend(left.in_tables);
     Reading {
         board,
-        diagnostics: report.into_diagnostics(),
-        unusable,
+        diagnostics,
+        unusable: left.unusable,
         varied: varied.filter(|varied: &VariedNets| !varied.is_empty()),
     }
+}
+
+/// What is left out, and why.
+#[derive(Default)]
+struct LeftOut {
+    unusable: Vec<UnusableNet>,
+    /// What is wrong in tables, which have places of their own.
+    in_tables: Vec<Diagnostic>,
 }
 
 fn board(
     report: &Report,
     root: &Node,
     file_name: &str,
-    unusable: &mut Vec<UnusableNet>,
+    tables: Tables,
+    left: &mut LeftOut,
 ) -> Option<(Board, VariedNets)> {
     const FIELDS: [&str; 7] = [
         "title",
@@ -115,13 +154,14 @@ fn board(
         drivers: &varied.drivers,
         receivers: &varied.receivers,
     };
-    let read = nets(&reader, net_nodes?, unusable);
-    for net in &read {
-        if !net.tolerances.is_empty() {
-            varied.add(&net.net.name, net.node, net.tolerances.clone());
+    let read = nets(&reader, net_nodes?, tables, left);
+    let mut nets = Vec::with_capacity(read.len());
+    for ReadNet { net, of_draws } in read {
+        if let Some(of_draws) = of_draws {
+            varied.add(&net.name, of_draws);
         }
+        nets.push(net);
     }
-    let nets: Vec<_> = read.into_iter().map(|read| read.net).collect();
     (is_sound && !nets.is_empty()).then_some((
         Board {
             title,
@@ -146,15 +186,12 @@ fn entries<'r>(fields: &Fields<'r>, field: &str) -> Option<&'r [(Key, Node)]> {
     fields.report.map(node, &fields.called(field), expected)
 }
 
+/// The entries of `nets`: nets and tables of nets. A table alone may stand without a list around it.
 fn net_nodes<'r>(fields: &Fields<'r>) -> Option<&'r [Node]> {
     const EXPECTED: &str = "a list of nets, each with `name`, `driver`, `clock` and `path`";
     let node = fields.require("nets", EXPECTED)?;
     if node.has_key("table") {
-        let message = "nets from a table are not supported yet";
-        fields
-            .report
-            .error(node, message, |diagnostic| diagnostic.expected(EXPECTED));
-        return None;
+        return Some(std::slice::from_ref(node));
     }
     let nodes = fields.report.list(node, "the list of nets", EXPECTED)?;
     if nodes.is_empty() {
@@ -166,52 +203,213 @@ fn net_nodes<'r>(fields: &Fields<'r>) -> Option<&'r [Node]> {
 }
 
 /// A net as it was read.
-struct ReadNet<'r> {
+struct ReadNet {
     net: super::Net,
-    node: &'r Node,
+    /// What its draws are read from, where it has tolerances.
+    of_draws: Option<OfDraws>,
+}
+
+/// What a net with tolerances is read from again.
+struct OfDraws {
+    node: Node,
+    /// Whether that stands in the board file itself.
+    is_of_file: bool,
     /// The tolerances in it and in what it uses.
     tolerances: Vec<Noted>,
 }
 
-fn nets<'r>(
+/// Reads the nets of the file and of the tables among them, in their order.
+fn nets(
     reader: &net::NetReader,
-    nodes: &'r [Node],
-    unusable: &mut Vec<UnusableNet>,
-) -> Vec<ReadNet<'r>> {
-    let mut times_used: HashMap<String, usize> = HashMap::new();
-    for name in nodes.iter().filter_map(name_written) {
+    nodes: &[Node],
+    tables: Tables,
+    left: &mut LeftOut,
+) -> Vec<ReadNet> {
+    let texts: Vec<Option<TableText>> = nodes
+        .iter()
+        .map(|node| table_text(reader.report, node, tables, left))
+        .collect();
+    let documents: Vec<Option<Document>> = texts
+        .iter()
+        .map(|text| {
+            text.as_ref()
+                .map(|table| Document::of_table(&table.text, &table.name))
+        })
+        .collect();
+    let reports: Vec<Option<Report>> = documents
+        .iter()
+        .map(|document| document.as_ref().map(Report::new))
+        .collect();
+    let mut entries = Vec::new();
+    for (index, node) in nodes.iter().enumerate() {
+        if !node.has_key("table") {
+            entries.push(Entry::Net(node, index + 1));
+        } else if let (Some(document), Some(report)) = (&documents[index], &reports[index]) {
+            entries.extend(entries_of(document, report, left));
+        }
+    }
+    let mut times_used: HashMap<&str, usize> = HashMap::new();
+    let names: Vec<Option<String>> = entries.iter().map(Entry::name_written).collect();
+    for name in names.iter().flatten() {
         *times_used.entry(name).or_default() += 1;
     }
     let mut nets = Vec::new();
     let mut seen = HashSet::new();
-    for (index, node) in nodes.iter().enumerate() {
-        let written = name_written(node);
-        let (mut net, tolerances) = reader.report.with_noted(|| {
-            let read = || reader.net(node);
-            reader.report.allowing_tolerances(read)
-        });
-        if let Some(name) = written.as_ref().filter(|name| times_used[*name] > 1) {
+    for (entry, written) in entries.iter().zip(&names) {
+        let report = entry.report().unwrap_or(reader.report);
+        let reader = net::NetReader { report, ..*reader };
+        let mut net = entry.read(&reader);
+        if let Some(name) = written
+            .as_ref()
+            .filter(|name| times_used[name.as_str()] > 1)
+        {
             let reason = format!("more than one net is called `{name}`");
-            if !seen.insert(name.clone()) {
-                reader.report.error(node, &reason, |d| {
-                    d.expected("a name of its own for each net")
-                });
+            if !seen.insert(name) {
+                entry.error(report, &reason, "a name of its own for each net");
             }
             net = Err(reason);
         }
         match net {
-            Ok(net) => nets.push(ReadNet {
-                net,
-                node,
-                tolerances,
-            }),
+            Ok(net) => nets.push(net),
             Err(reason) => {
-                let name = written.unwrap_or_else(|| format!("net {}", index + 1));
-                unusable.push(UnusableNet { name, reason });
+                let name = written.clone().unwrap_or_else(|| entry.called());
+                left.unusable.push(UnusableNet { name, reason });
             }
         }
     }
+    drop(entries);
+    let of_tables = reports.into_iter().flatten();
+    left.in_tables
+        .extend(of_tables.flat_map(Report::into_diagnostics));
     nets
+}
+
+/// The text of the table that an entry of `nets` names, if it names one.
+fn table_text(
+    report: &Report,
+    node: &Node,
+    tables: Tables,
+    left: &mut LeftOut,
+) -> Option<TableText> {
+    if !node.has_key("table") {
+        return None;
+    }
+    let fields = report.fields(node, "the table of nets", &["table"])?;
+    let name = fields.require_name("table")?;
+    match tables(&name) {
+        Ok(table) => Some(TableText {
+            text: table.text.trim_start_matches('\u{feff}').to_owned(),
+            ..table
+        }),
+        Err(reason) => {
+            let message = format!("cannot read the table `{name}`: {reason}");
+            fields.error(&message, "the name of a CSV file beside the board file");
+            left.unusable.push(UnusableNet {
+                name: format!("all nets of `{name}`"),
+                reason,
+            });
+            None
+        }
+    }
+}
+
+/// The rows of a table, none where its header cannot be understood.
+fn entries_of<'t>(
+    document: &'t Document<'t>,
+    report: &'t Report<'t>,
+    left: &mut LeftOut,
+) -> Vec<Entry<'t>> {
+    let table = report.attempt(|| NetTable::read(document, report));
+    match table {
+        Ok(table) => {
+            let table = Arc::new(table);
+            if table.rows().next().is_none() {
+                report.error(
+                    &document.root,
+                    "the table has no nets below its header",
+                    |d| d,
+                );
+            }
+            let row = |(row, name)| Entry::Row(Arc::clone(&table), report, row, name);
+            table.rows().map(row).collect()
+        }
+        Err(reason) => {
+            left.unusable.push(UnusableNet {
+                name: format!("all nets of `{}`", document.file),
+                reason: reason.unwrap_or_else(|| "its header cannot be read".into()),
+            });
+            Vec::new()
+        }
+    }
+}
+
+/// What a net is read from.
+enum Entry<'t> {
+    /// An entry of the board file with its number, from 1.
+    Net(&'t Node, usize),
+    /// A row of a table, and the name in it.
+    Row(Arc<NetTable<'t>>, &'t Report<'t>, RowStart, Option<String>),
+}
+
+impl<'t> Entry<'t> {
+    fn name_written(&self) -> Option<String> {
+        match self {
+            Self::Net(node, _) => name_written(node),
+            Self::Row(.., name) => name.clone(),
+        }
+    }
+
+    /// Where its mistakes go, if not to the board file's report.
+    fn report(&self) -> Option<&'t Report<'t>> {
+        match self {
+            Self::Net(..) => None,
+            Self::Row(_, report, ..) => Some(report),
+        }
+    }
+
+    fn read(&self, reader: &net::NetReader) -> Result<ReadNet, String> {
+        let report = reader.report;
+        let read = |net: super::Net, tolerances: Vec<Noted>, node: &Node| ReadNet {
+            net,
+            of_draws: (!tolerances.is_empty()).then(|| OfDraws {
+                node: node.clone(),
+                is_of_file: matches!(self, Self::Net(..)),
+                tolerances,
+            }),
+        };
+        match self {
+            Self::Net(node, _) => {
+                let (net, tolerances) =
+                    report.with_noted(|| report.allowing_tolerances(|| reader.net(node)));
+                Ok(read(net?, tolerances, node))
+            }
+            Self::Row(table, _, row, _) => {
+                let node = report.attempt(|| table.net(*row, report));
+                let node = node.map_err(|reason| reason.unwrap_or_default())?;
+                let (net, tolerances) = report.with_noted(|| {
+                    report.refusing_tolerances(NONE_IN_TABLES, || reader.net(&node))
+                });
+                Ok(read(net?, tolerances, &node))
+            }
+        }
+    }
+
+    fn error(&self, report: &Report, message: &str, expected: &str) {
+        match self {
+            Self::Net(node, _) => report.error(*node, message, |d| d.expected(expected)),
+            Self::Row(table, _, row, _) => {
+                report.error(&table.start(*row), message, |d| d.expected(expected));
+            }
+        }
+    }
+
+    /// What to call a net without a name.
+    fn called(&self) -> String {
+        match self {
+            Self::Net(_, number) => format!("net {number}"),
+            Self::Row(_, report, row, _) => format!("{}, row {}", report.file(), row.line),
+        }
+    }
 }
 
 /// The name of a net, as far as one is written at all.

@@ -3,7 +3,7 @@
 use std::cell::RefCell;
 use std::sync::Arc;
 
-use super::super::{Along, Driver, Layer, Net, Plane, ReceiverPart};
+use super::super::{Along, Driver, Group, Layer, Net, Phase, Plane, ReceiverPart};
 use super::antenna::in_mm;
 use super::definitions::{Definitions, Part, Unavailable};
 use super::path::PathReader;
@@ -36,7 +36,7 @@ impl NetReader<'_> {
     }
 
     fn read(&self, node: &Node, unreadable: &RefCell<Option<String>>) -> Option<Net> {
-        const FIELDS: [&str; 8] = [
+        const FIELDS: [&str; 11] = [
             "name",
             "driver",
             "setting",
@@ -45,6 +45,9 @@ impl NetReader<'_> {
             "path",
             "edge_distance",
             "along",
+            "count",
+            "clock_source",
+            "phase",
         ];
         const ALONG: [(&str, Along); 2] = [("length", Along::Length), ("width", Along::Width)];
         let mut fields = self.report.fields(node, "the net", &FIELDS)?;
@@ -67,6 +70,7 @@ impl NetReader<'_> {
         }
         let along = fields.choice("along", &ALONG).unwrap_or_default();
         let edge_distance_m = self.edge_distance(&fields, along);
+        let group = self.group(&fields);
         let path = fields
             .require("path", "a list of items outwards from the driver")
             .and_then(|node| PathReader::new(self, unreadable).path(node, &fields.owner));
@@ -78,6 +82,7 @@ impl NetReader<'_> {
             path: path?,
             edge_distance_m,
             along,
+            group,
         })
     }
 
@@ -112,6 +117,29 @@ impl NetReader<'_> {
             d.expected("more than 0 % and less than 100 %")
         });
         None
+    }
+
+    /// How many lines the net stands for, and what they keep step with.
+    fn group(&self, fields: &Fields) -> Group {
+        const PHASES: [(&str, Phase); 2] = [
+            ("locked", Phase::Locked),
+            ("independent", Phase::Independent),
+        ];
+        const MOST: f64 = 10_000.0;
+        let count = fields.quantity("count", Dimension::Number, Range::AtLeastOne);
+        if let (Some(count), Some(node)) = (count, fields.get("count"))
+            && (count.fract() != 0.0 || count > MOST)
+        {
+            let message = format!("{} cannot be {}", fields.called("count"), node.describe());
+            self.report.error(node, message, |d| {
+                d.expected("a whole number of lines from 1 to 10000")
+            });
+        }
+        Group {
+            count: count.map_or(1, |count| count as u32),
+            clock_source: fields.name("clock_source").map(Arc::from),
+            phase: fields.choice("phase", &PHASES).unwrap_or_default(),
+        }
     }
 
     /// The distance of a straight path from the nearest edge of the plane.

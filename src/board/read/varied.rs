@@ -3,6 +3,7 @@
 use std::collections::BTreeMap;
 
 use super::super::{Driver, Layer, Net, Plane, ReceiverPart};
+use super::OfDraws;
 use super::definitions::Definitions;
 use super::net::NetReader;
 use crate::text::{Draw, Node, Noted, Report, Tolerance};
@@ -67,10 +68,16 @@ impl VariedNets {
     }
 
     /// Takes up a net and the tolerances that were met in reading it.
-    pub(super) fn add(&mut self, name: &str, node: &Node, noted: Vec<Noted>) {
+    pub(super) fn add(&mut self, name: &str, of_draws: OfDraws) {
+        let OfDraws {
+            node,
+            is_of_file,
+            tolerances: noted,
+        } = of_draws;
+        // A row of a table has none of its own, and its places are another file's.
+        let own = |noted: &Noted| is_of_file.then(|| noted.way_from(&node)).flatten();
         let named = |noted: &Noted| NamedTolerance {
-            name: noted
-                .way_from(node)
+            name: own(noted)
                 .or_else(|| self.drivers.name_of(noted))
                 .or_else(|| self.receivers.name_of(noted))
                 .or_else(|| self.layers.name_of(noted))
@@ -78,8 +85,8 @@ impl VariedNets {
             tolerance: noted.tolerance,
         };
         let net = VariedNet {
-            node: node.clone(),
             tolerances: noted.iter().map(named).collect(),
+            node,
             noted,
         };
         self.by_name.insert(name.to_owned(), net);

@@ -186,7 +186,7 @@ impl Lights {
                 .iter()
                 .map(|&at_m| source.at(at_m))
                 .collect();
-            for way in 0..2 {
+            for way in [0, 1] {
                 let of_spot = |(_, spot): (usize, Spot)| spot.of(&waves[spot.knot][way]);
                 examples.push(knots.spots().map(of_spot).collect());
             }

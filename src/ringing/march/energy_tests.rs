@@ -51,7 +51,7 @@ impl Powers {
             }
             for input in &march.network.inputs {
                 let input_v = voltage_v[input.node];
-                let clamps = input.clamps.from_middle(march.middle_v);
+                let clamps = input.clamps.with_middle(march.middle_v);
                 records[3][step] += input_v * clamps.load(input_v).0;
             }
             for (line, record) in march.lines.iter().zip(&mut records[4..]) {

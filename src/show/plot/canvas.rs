@@ -17,8 +17,10 @@ const COST_LABEL: f64 = 1000.0;
 const COST_MARKER: f64 = 20.0;
 const COST_LIMIT: f64 = 15.0;
 const COST_STEM: f64 = 4.0;
-const COST_LOOP: f64 = 3.0;
+const COST_BESIDE: f64 = 3.0;
 
+/// From line to line of a text in a box.
+const BOX_LINE: f64 = LABEL_SIZE + 4.0;
 /// Radius of the ring around the worst harmonic.
 const RING: f64 = 7.0;
 
@@ -74,13 +76,13 @@ impl Canvas {
             self.obstacles.add_rect(around((x, y), radius), COST_MARKER);
         }
         for line in lines {
-            let Some(level) = line.loop_area.filter(|level| *level >= lowest) else {
+            let Some(level) = line.beside.filter(|level| *level >= lowest) else {
                 continue;
             };
             let at = self.point(line.frequency_hz, level);
             self.picture
                 .marker(Marker::HollowDiamond, at, radius + 0.4, GREY);
-            self.obstacles.add_rect(around(at, radius), COST_LOOP);
+            self.obstacles.add_rect(around(at, radius), COST_BESIDE);
         }
     }
 
@@ -185,18 +187,11 @@ impl Canvas {
         self.obstacles.add_line(&[marker, limit], COST_MARKER);
     }
 
-    /// Says in words what the worst margin is, in a box with a leader.
+    /// Says in words what the worst margin is, in a box with a leader, where it covers least.
     pub fn write_callout(&mut self, worst: &WorstHere) {
-        const LINE: f64 = LABEL_SIZE + 4.0;
         let words = callout_words(worst);
         let marker = self.point(worst.line.frequency_hz, worst.line.level);
-        let width = words
-            .iter()
-            .enumerate()
-            .map(|(index, line)| text_width(line, LABEL_SIZE, index == 0))
-            .fold(0.0, f64::max)
-            + 18.0;
-        let height = LINE * words.len() as f64 + 9.0;
+        let (width, height) = box_size(&words);
 
         let mut best: Option<(f64, Rect)> = None;
         for row in 0..40 {
@@ -229,23 +224,53 @@ impl Canvas {
                 }
             }
         }
-        let Some((_, rect)) = best else { return };
+        if let Some((_, rect)) = best {
+            self.draw_box(&rect, marker, &words);
+        }
+    }
+
+    /// Writes texts about frequencies and levels, which rise in frequency, in boxes side by side along the top, each
+    /// with a leader.
+    pub fn write_boxes(&mut self, boxes: &[((f64, f64), Vec<String>)]) {
+        const GAP: f64 = 8.0;
+        let widths: Vec<f64> = boxes.iter().map(|(_, words)| box_size(words).0).collect();
+        let mut lefts: Vec<f64> = Vec::with_capacity(boxes.len());
+        let mut free = self.rect.left + GAP;
+        for (((frequency_hz, level), _), width) in boxes.iter().zip(&widths) {
+            let left = (self.point(*frequency_hz, *level).0 - width / 2.0).max(free);
+            free = left + width + GAP;
+            lefts.push(left);
+        }
+        let mut free = self.rect.right - GAP;
+        for (left, width) in lefts.iter_mut().zip(&widths).rev() {
+            *left = left.min(free - width);
+            free = *left - GAP;
+        }
+        for (((frequency_hz, level), words), left) in boxes.iter().zip(lefts) {
+            let (width, height) = box_size(words);
+            let top = self.rect.top + GAP;
+            let rect = Rect {
+                left,
+                top,
+                right: left + width,
+                bottom: top + height,
+            };
+            self.draw_box(&rect, self.point(*frequency_hz, *level), words);
+        }
+    }
+
+    /// Lines of text, the first in bold, in a box with a leader to a marker.
+    fn draw_box(&mut self, rect: &Rect, marker: Point, words: &[String]) {
         let end = rect.nearest(marker);
         self.picture
             .line(&[toward(marker, end, RING), end], Pen::solid(BLACK, 1.0));
         self.picture.area(&rect.corners(), WHITE, 0.9);
-        self.picture.outline(&rect, Pen::solid(BLACK, 1.0));
+        self.picture.outline(rect, Pen::solid(BLACK, 1.0));
         for (index, line) in words.iter().enumerate() {
+            let baseline = rect.top + 2.0 + BOX_LINE * (index as f64 + 0.9);
             self.picture.text(Text {
                 bold: index == 0,
-                ..text(
-                    (
-                        rect.left + 9.0,
-                        rect.top + 2.0 + LINE * (index as f64 + 0.9),
-                    ),
-                    line,
-                    LABEL_SIZE,
-                )
+                ..text((rect.left + 9.0, baseline), line, LABEL_SIZE)
             });
         }
     }
@@ -271,6 +296,16 @@ impl Canvas {
             || rect.bottom > self.rect.bottom - 2.0;
         if outside { COST_LABEL } else { 0.0 }
     }
+}
+
+/// Width and height of a box around lines of text, the first in bold.
+fn box_size(words: &[String]) -> (f64, f64) {
+    let widths = words
+        .iter()
+        .enumerate()
+        .map(|(index, line)| text_width(line, LABEL_SIZE, index == 0));
+    let width = widths.fold(0.0, f64::max) + 18.0;
+    (width, BOX_LINE * words.len() as f64 + 9.0)
 }
 
 fn callout_words(worst: &WorstHere) -> [String; 3] {

@@ -1,18 +1,22 @@
 //! Pictures: first a list of shapes, then painted as PNG or SVG.
 
 mod axis;
+mod board_spectrum;
 mod canvas;
 mod page;
 mod paint;
 mod picture;
 mod place;
+mod ranking;
 mod readings;
 mod spectrum;
 mod sweep;
 mod variants;
 mod waveform;
 
+pub use board_spectrum::board_spectrum_picture;
 pub use picture::Picture;
+pub use ranking::ranking_picture;
 pub use spectrum::spectrum_picture;
 pub use sweep::sweep_picture;
 pub use variants::{variants_spectrum_picture, variants_waveform_picture};

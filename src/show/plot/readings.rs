@@ -13,7 +13,8 @@ pub(super) struct Line {
     pub number: usize,
     pub frequency_hz: f64,
     pub level: f64,
-    pub loop_area: Option<f64>,
+    /// A level to compare with.
+    pub beside: Option<f64>,
 }
 
 /// The harmonic with the smallest margin at a distance.
@@ -59,7 +60,7 @@ pub(super) fn lines(net: &NetResult, distance_m: f64) -> Vec<Line> {
                 number: harmonic.number,
                 frequency_hz: harmonic.frequency_hz,
                 level: field.field_dbuv_per_m.filter(|level| level.is_finite())?,
-                loop_area: field.loop_area_dbuv_per_m.filter(|level| level.is_finite()),
+                beside: field.loop_area_dbuv_per_m.filter(|level| level.is_finite()),
             })
         })
         .collect()
@@ -97,7 +98,7 @@ pub(super) fn level_range(
         .collect();
     let levels = lines
         .iter()
-        .flat_map(|l| [Some(l.level), l.loop_area])
+        .flat_map(|l| [Some(l.level), l.beside])
         .flatten();
     let highest = levels
         .clone()

@@ -49,7 +49,7 @@ pub fn variants_spectrum_picture(
         .map(|variant| {
             let mut lines = lines(&variant.result, distance_m);
             // The loop-area figure is left to the pictures of one net.
-            lines.iter_mut().for_each(|line| line.loop_area = None);
+            lines.iter_mut().for_each(|line| line.beside = None);
             lines
         })
         .collect();

@@ -124,8 +124,8 @@ pub fn parse_quantity(text: &str, dimension: Dimension) -> Result<f64, QuantityE
         return Err(error("cannot have a tolerance here".into(), None));
     }
     if unit.starts_with(',') {
-        let pointed = text.replacen(',', ".", 1);
-        return Err(error("has a decimal comma".into(), Some(pointed)));
+        let pointed = (!text.contains('.')).then(|| text.replacen(',', ".", 1));
+        return Err(error("has a decimal comma".into(), pointed));
     }
     if unit.starts_with(['.', '+', '-']) {
         return Err(error(format!("is not {}", dimension.name()), None));

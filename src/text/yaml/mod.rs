@@ -53,6 +53,14 @@ pub struct Key {
 }
 
 impl Node {
+    /// A part of a table's row at a place ([`Document::of_table`]).
+    pub fn at(position: Position, value: Value) -> Self {
+        Self {
+            id: id_of_cell(position),
+            value,
+        }
+    }
+
     /// Whether this is a map with such a key.
     pub fn has_key(&self, key: &str) -> bool {
         matches!(&self.value, Value::Map(entries) if entries.iter().any(|(k, _)| k.text == key))
@@ -98,6 +106,31 @@ impl Node {
     }
 }
 
+impl Key {
+    /// A key of a table's row at a place ([`Document::of_table`]).
+    pub fn at(position: Position, text: &str) -> Self {
+        Self {
+            id: id_of_cell(position),
+            text: text.to_owned(),
+        }
+    }
+}
+
+/// Columns that fit into the number of a table's part.
+const CELL_COLUMNS: usize = 1 << 16;
+
+/// A place as the number of a part.
+fn id_of_cell(position: Position) -> usize {
+    position.line * CELL_COLUMNS + position.column.min(CELL_COLUMNS - 1)
+}
+
+fn position_of_cell(id: usize) -> Position {
+    Position {
+        line: id / CELL_COLUMNS,
+        column: id % CELL_COLUMNS,
+    }
+}
+
 /// What a diagnostic can point at.
 pub trait Located {
     /// The number in the order of reading.
@@ -124,8 +157,11 @@ pub struct Document<'t> {
     pub file: &'t str,
     /// The whole of it.
     pub root: Node,
-    text: &'t str,
+    /// The text itself.
+    pub text: &'t str,
     reread_budget_bytes: Cell<usize>,
+    /// Whether numbers of parts are places already.
+    is_table: bool,
 }
 
 /// Reads a YAML text into a tree.
@@ -159,13 +195,25 @@ pub fn parse_yaml<'t>(text: &'t str, file: &'t str) -> Result<Document<'t>, Box<
                 root,
                 text,
                 reread_budget_bytes,
+                is_table: false,
             })
         }
         Err(error) => Err(explained(&error, reading.problem.take(), text, file).into()),
     }
 }
 
-impl Document<'_> {
+impl<'t> Document<'t> {
+    /// A table's text, for diagnostics that point at parts made with [`Node::at`] and [`Key::at`].
+    pub fn of_table(text: &'t str, file: &'t str) -> Self {
+        Self {
+            file,
+            root: Node::at(Position { line: 1, column: 1 }, Value::Null),
+            text,
+            reread_budget_bytes: Cell::new(REREAD_BUDGET_BYTES),
+            is_table: true,
+        }
+    }
+
     /// A diagnostic that points at `what`. Its position is left out once finding places has cost too much.
     pub fn diagnostic(
         &self,
@@ -173,25 +221,37 @@ impl Document<'_> {
         what: &impl Located,
         message: impl Into<String>,
     ) -> Diagnostic {
-        let position = self.position(what.id());
+        let is_affordable = self.take_from_budget().is_some();
+        let position = if self.is_table {
+            Some(position_of_cell(what.id()))
+        } else {
+            is_affordable.then(|| self.find(what.id())).flatten()
+        };
+        let line_of = if is_affordable { self.text } else { "" };
         Diagnostic {
             severity,
-            ..at(self.text, self.file, position, message)
+            ..at(line_of, self.file, position, message)
         }
     }
 
     /// Where a part begins; `None` once finding places has cost too much.
     pub fn place_of(&self, what: &impl Located) -> Option<Position> {
-        self.position(what.id())
+        self.take_from_budget()?;
+        self.find(what.id())
     }
 
-    /// Finds a part by reading the text again and failing there: the parser tells places only of errors.
-    fn position(&self, id: usize) -> Option<Position> {
+    /// Allows for one more reading of the text, as long as that has not cost too much.
+    fn take_from_budget(&self) -> Option<()> {
         let left = self
             .reread_budget_bytes
             .get()
             .checked_sub(self.text.len())?;
         self.reread_budget_bytes.set(left);
+        Some(())
+    }
+
+    /// Finds a part by reading the text again and failing there: the parser tells places only of errors.
+    fn find(&self, id: usize) -> Option<Position> {
         let reading = Reading::stopping_at(id);
         reading
             .read(self.text)
