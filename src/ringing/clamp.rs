@@ -63,7 +63,7 @@ impl Clamps {
     }
 
     /// The same clamps with voltages counted from `middle_v`.
-    pub(super) fn with_middle(&self, middle_v: f64) -> Self {
+    pub(super) fn counted_from(&self, middle_v: f64) -> Self {
         let shifted = |(junction, rail_v)| (junction, rail_v - middle_v);
         Self {
             low: self.low.map(shifted),

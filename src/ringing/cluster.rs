@@ -2,6 +2,8 @@
 
 use super::algebra::inverse;
 use super::clamp::Clamps;
+use super::companion::Companion;
+use super::network::{BranchEnd, DRIVER_NODE, Network};
 use ndarray::{Array1, Array2};
 
 /// Largest change of a voltage in the last round of an accepted solution.
@@ -206,6 +208,66 @@ impl Cluster {
         }
         currents.into_iter().map(|current| current.0).collect()
     }
+}
+
+/// The clusters of nodes that lumped branches join, with everything that loads them: lines' ends (node and
+/// conductance), the driver, and clamps with voltages counted from `middle_v`.
+pub(super) fn clusters(
+    network: &Network,
+    line_ends: impl Iterator<Item = (usize, f64)>,
+    branches: &[Companion],
+    driver_s: f64,
+    middle_v: f64,
+) -> Vec<Cluster> {
+    let count = network.node_count;
+    let mut conductance = Array2::<f64>::zeros((count, count));
+    conductance[[DRIVER_NODE, DRIVER_NODE]] += driver_s;
+    for (node, conductance_s) in line_ends {
+        conductance[[node, node]] += conductance_s;
+    }
+    // Every node starts in a cluster of its own; a branch between two makes them one.
+    let mut cluster_of: Vec<usize> = (0..count).collect();
+    for branch in branches {
+        let (from, g) = (branch.from, branch.conductance_s);
+        conductance[[from, from]] += g;
+        if let BranchEnd::Node(to) = branch.to {
+            conductance[[to, to]] += g;
+            conductance[[from, to]] -= g;
+            conductance[[to, from]] -= g;
+            let (kept, merged) = (cluster_of[from], cluster_of[to]);
+            for cluster in &mut cluster_of {
+                if *cluster == merged {
+                    *cluster = kept;
+                }
+            }
+        }
+    }
+    (0..count)
+        .map(|id| {
+            (0..count)
+                .filter(|&node| cluster_of[node] == id)
+                .collect::<Vec<usize>>()
+        })
+        .filter(|nodes| !nodes.is_empty())
+        .map(|nodes| {
+            let mut loads: Vec<(usize, Load)> = network
+                .inputs
+                .iter()
+                .filter(|input| input.clamps.any() && nodes.contains(&input.node))
+                .map(|input| {
+                    let clamps = input.clamps.counted_from(middle_v);
+                    (input.node, Load::Clamps(clamps))
+                })
+                .collect();
+            if nodes.contains(&DRIVER_NODE) && !network.source.is_steady() {
+                loads.push((DRIVER_NODE, Load::DriverChange));
+            }
+            let block = Array2::from_shape_fn((nodes.len(), nodes.len()), |(row, column)| {
+                conductance[[nodes[row], nodes[column]]]
+            });
+            Cluster::new(nodes, &block, loads)
+        })
+        .collect()
 }
 
 #[cfg(test)]

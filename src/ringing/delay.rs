@@ -2,12 +2,12 @@
 
 use super::filter::{Pair, pair};
 
-/// A line's two travelling waves, remembered for as long as their delay and for at least one whole round of the march.
+/// A line's two travelling waves, remembered for as long as their delay and for at least one whole period.
 #[derive(Debug, Clone)]
 pub(super) struct Delay {
-    /// A ring of a whole number of rounds.
+    /// A ring of a whole number of periods.
     samples: Vec<Pair>,
-    round: usize,
+    period: usize,
     /// The present step's place in the ring.
     now: usize,
     /// Steps from the present back to the oldest sample of the interpolation.
@@ -19,16 +19,16 @@ impl Delay {
     /// Shortest delay, in steps: the interpolation must not need the present.
     pub(super) const SHORTEST: f64 = 2.0;
 
-    /// Waves that have always been zero, delayed by `delay_steps`; `round` in steps.
-    pub(super) fn new(delay_steps: f64, round: usize) -> Self {
+    /// Waves that have always been zero, delayed by `delay_steps`; `period` in steps.
+    pub(super) fn new(delay_steps: f64, period: usize) -> Self {
         debug_assert!(delay_steps >= Self::SHORTEST);
         let whole = delay_steps.floor();
         let oldest_tap = whole as usize + 2;
         // Third-order Lagrange interpolation at p between samples at 0, 1, 2 and 3.
         let p = 2.0 - (delay_steps - whole);
         Self {
-            samples: vec![[0.0; 2]; round * (oldest_tap + 1).div_ceil(round)],
-            round,
+            samples: vec![[0.0; 2]; period * (oldest_tap + 1).div_ceil(period)],
+            period,
             now: 0,
             oldest_tap,
             weights: [
@@ -71,10 +71,10 @@ impl Delay {
         }
     }
 
-    /// What was sent in the round that has just ended, wave by wave.
-    pub(super) fn last_round(&self) -> [Vec<f64>; 2] {
+    /// What was sent in the period that has just ended, wave by wave.
+    pub(super) fn last_period(&self) -> [Vec<f64>; 2] {
         let (before, after) = self.samples.split_at(self.now);
-        let skipped = self.samples.len() - self.round;
+        let skipped = self.samples.len() - self.period;
         let sent = after.iter().chain(before).skip(skipped);
         [0, 1].map(|wave| sent.clone().map(|sample| sample[wave]).collect())
     }
@@ -112,14 +112,14 @@ mod tests {
     }
 
     #[test]
-    fn the_last_round_is_what_was_sent() {
+    fn the_last_period_is_what_was_sent() {
         for steps in [16, 32, 48] {
             let mut delay = Delay::new(20.5, 16);
             for step in 0..steps {
                 delay.send([f64::from(step), 0.5]);
             }
             let expected: Vec<f64> = (steps - 16..steps).map(f64::from).collect();
-            assert_eq!(delay.last_round(), [expected, vec![0.5; 16]]);
+            assert_eq!(delay.last_period(), [expected, vec![0.5; 16]]);
         }
     }
 }

@@ -1,13 +1,14 @@
 //! The march: step by step until a whole period repeats.
 
-use super::cluster::{Cluster, Load};
+use super::cluster::{Cluster, clusters};
 use super::companion::{Companion, pi_section};
 use super::extrapolate::Extrapolation;
 use super::model::{Model, line_models};
 use super::network::{Branch, BranchEnd, DRIVER_NODE, Network};
+use super::settled::{MarchReport, Settled, SettledWaveform, Taken, WaveRecord};
 use super::steps::Pace;
 use super::travelling::TravellingLine;
-use ndarray::Array2;
+use std::ops::Range;
 
 #[cfg(test)]
 mod energy_tests;
@@ -21,65 +22,6 @@ const RESTARTS_A_STRIDE: usize = 2;
 const MOST_DOUBLINGS: usize = 16;
 /// Most steps of one march, some tenths of a second's worth.
 const MOST_STEPS: usize = 10_000_000;
-
-/// One settled period of a net.
-#[derive(Debug, Clone)]
-pub struct Settled {
-    /// Voltages and currents at the driver and the receivers.
-    pub waveform: SettledWaveform,
-    /// The waves on each line, in the order of [`Network::spans`].
-    pub waves: Vec<WaveRecord>,
-    /// How it was reached.
-    pub report: MarchReport,
-}
-
-/// One settled period, from the start of the rising edge.
-#[derive(Debug, Clone, PartialEq)]
-pub struct SettledWaveform {
-    /// When the samples were taken.
-    pub pace: Pace,
-    /// Voltage at the driver's pin.
-    pub driver_v: Vec<f64>,
-    /// Current out of the driver.
-    pub driver_a: Vec<f64>,
-    /// Voltage at each receiver, in the order of the path.
-    pub receivers_v: Vec<Vec<f64>>,
-}
-
-/// The two travelling waves of a line over one settled period, volts.
-#[derive(Debug, Clone)]
-pub struct WaveRecord {
-    /// The wave away from the driver.
-    pub outward_v: Vec<f64>,
-    /// The wave back to the driver.
-    pub inward_v: Vec<f64>,
-    /// Where they were taken.
-    pub taken: Taken,
-}
-
-/// Where on a line its two waves were taken.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum Taken {
-    /// Each where it sets out: outward at the near end, inward at the far end.
-    AtStart,
-    /// Both in the middle of a line too short to carry waves.
-    InMiddle,
-}
-
-/// How the settled waveform was reached.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct MarchReport {
-    /// Steps in one period.
-    pub steps_per_period: usize,
-    /// Steps of them that were marched; the others are time at rest, or the mirror image of those marched.
-    pub marched_steps: usize,
-    /// Times these steps were marched until they repeated.
-    pub periods: usize,
-    /// How far the last period may still be from the settled one, as a share of the swing.
-    pub residual: f64,
-    /// Whether that is small enough.
-    pub settled: bool,
-}
 
 /// Marches a net until a whole period repeats, in steps fine enough for the top frequency, up to which losses are
 /// fitted.
@@ -113,9 +55,9 @@ struct March<'a> {
     network: &'a Network,
     pace: Pace,
     middle_v: f64,
-    /// Whether one half of the period mirrors the other, which is then not marched.
+    /// Whether one half of the period mirrors the other: a round is then the first half, with all signs turned between.
     mirrored: bool,
-    /// The driver's state at each step of a round: conductance and short-circuit current.
+    /// The driver's state at each step: conductance and short-circuit current.
     drive: Vec<(f64, f64)>,
     base_conductance_s: f64,
     lines: Vec<LineState>,
@@ -146,7 +88,7 @@ impl<'a> March<'a> {
         let middle_v = source.low_v() + 0.5 * source.swing_v();
         let mirrored = is_mirrored(network, &pace, middle_v);
         let step_s = pace.step_s;
-        let steps = pace.marched() / if mirrored { 2 } else { 1 };
+        let steps = pace.marched();
         let mut branches: Vec<Branch> = network.branches.clone();
         let mut lines = Vec::with_capacity(network.spans.len());
         for (span, model) in network.spans.iter().zip(models) {
@@ -185,7 +127,11 @@ impl<'a> March<'a> {
             })
             .collect();
         let base_conductance_s = source.conductance_s(0.0);
-        let clusters = clusters(network, &lines, &branches, base_conductance_s, middle_v);
+        let line_ends = lines.iter().flat_map(|line| match line {
+            LineState::Waves(line) => line.conductances_s().to_vec(),
+            LineState::Lumped { .. } => Vec::new(),
+        });
+        let clusters = clusters(network, line_ends, &branches, base_conductance_s, middle_v);
         Self {
             network,
             pace,
@@ -210,7 +156,7 @@ impl<'a> March<'a> {
     /// Marches until a round repeats.
     fn settle(&mut self) -> MarchReport {
         let swing_v = self.network.source.swing_v();
-        let marched_steps = self.drive.len();
+        let marched_steps = self.round().len();
         let most_periods = (MOST_STEPS / marched_steps).max(4);
         let mut report = MarchReport {
             steps_per_period: self.pace.total(),
@@ -253,7 +199,19 @@ impl<'a> March<'a> {
             }
             start = self.state();
         }
+        if self.mirrored {
+            // What is handed on has been marched, not inferred.
+            for step in self.round().end..self.drive.len() {
+                self.one_step(step);
+            }
+            report.periods += 1;
+        }
         report
+    }
+
+    /// The steps that are marched until they repeat.
+    fn round(&self) -> Range<usize> {
+        0..self.drive.len() / if self.mirrored { 2 } else { 1 }
     }
 
     /// Every value that has a say in what is still to come.
@@ -293,7 +251,7 @@ impl<'a> March<'a> {
             };
             late(0, high).max(late(high, all))
         };
-        let waves = self.lines.iter().flat_map(LineState::last_round);
+        let waves = self.lines.iter().flat_map(LineState::last_period);
         let waveform = &self.waveform;
         let voltages = waveform.receivers_v.iter().chain([&waveform.driver_v]);
         voltages
@@ -307,7 +265,7 @@ impl<'a> March<'a> {
         if self.mirrored {
             self.negate();
         }
-        for step in 0..self.drive.len() {
+        for step in self.round() {
             self.one_step(step);
         }
     }
@@ -353,28 +311,27 @@ impl<'a> March<'a> {
     }
 
     fn into_settled(self, report: MarchReport) -> Settled {
-        let (mirrored, middle_v) = (self.mirrored, self.middle_v);
-        let whole = |round: Vec<f64>, offset: f64| whole_period(round, mirrored, offset);
-        let waveform = self.waveform;
+        // From voltages counted from the middle to voltages.
+        let raised = |mut samples: Vec<f64>, by_v: f64| {
+            samples.iter_mut().for_each(|sample| *sample += by_v);
+            samples
+        };
+        let middle_v = self.middle_v;
         let waves = self.lines.into_iter().map(|line| {
-            let [outward_v, inward_v] = line.last_round();
+            let [outward_v, inward_v] = line.last_period();
             WaveRecord {
-                outward_v: whole(outward_v, middle_v / 2.0),
-                inward_v: whole(inward_v, middle_v / 2.0),
+                outward_v: raised(outward_v, middle_v / 2.0),
+                inward_v: raised(inward_v, middle_v / 2.0),
                 taken: line.taken(),
             }
         });
+        let receivers_v = self.waveform.receivers_v.into_iter();
         Settled {
             waves: waves.collect(),
             waveform: SettledWaveform {
-                pace: waveform.pace,
-                driver_v: whole(waveform.driver_v, middle_v),
-                driver_a: whole(waveform.driver_a, 0.0),
-                receivers_v: waveform
-                    .receivers_v
-                    .into_iter()
-                    .map(|record| whole(record, middle_v))
-                    .collect(),
+                driver_v: raised(self.waveform.driver_v, middle_v),
+                receivers_v: receivers_v.map(|v| raised(v, middle_v)).collect(),
+                ..self.waveform
             },
             report,
         }
@@ -396,23 +353,8 @@ fn is_mirrored(network: &Network, pace: &Pace, middle_v: f64) -> bool {
         && network.source.is_mirrored(network.period_s)
         && clamps
             .into_iter()
-            .all(|clamps| clamps.with_middle(middle_v).is_odd())
+            .all(|clamps| clamps.counted_from(middle_v).is_odd())
         && rails.into_iter().all(|rail_v| rail_v == middle_v)
-}
-
-/// A whole period from what was marched of it, with an offset.
-fn whole_period(mut round: Vec<f64>, mirrored: bool, offset: f64) -> Vec<f64> {
-    if mirrored {
-        round.extend_from_within(..);
-        let half = round.len() / 2;
-        for value in &mut round[half..] {
-            *value = -*value;
-        }
-    }
-    for value in &mut round {
-        *value += offset;
-    }
-    round
 }
 
 impl LineState {
@@ -435,10 +377,10 @@ impl LineState {
         }
     }
 
-    /// The outward and the inward wave of the last round.
-    fn last_round(&self) -> [Vec<f64>; 2] {
+    /// The outward and the inward wave of the last period.
+    fn last_period(&self) -> [Vec<f64>; 2] {
         match self {
-            Self::Waves(line) => line.last_round(),
+            Self::Waves(line) => line.last_period(),
             Self::Lumped { record, .. } => record.clone(),
         }
     }
@@ -449,67 +391,4 @@ impl LineState {
             Self::Lumped { .. } => Taken::InMiddle,
         }
     }
-}
-
-/// The clusters of nodes that lumped branches join, with everything that loads them.
-fn clusters(
-    network: &Network,
-    lines: &[LineState],
-    branches: &[Companion],
-    driver_s: f64,
-    middle_v: f64,
-) -> Vec<Cluster> {
-    let count = network.node_count;
-    let mut conductance = Array2::<f64>::zeros((count, count));
-    conductance[[DRIVER_NODE, DRIVER_NODE]] += driver_s;
-    for line in lines {
-        if let LineState::Waves(line) = line {
-            for (node, conductance_s) in line.conductances_s() {
-                conductance[[node, node]] += conductance_s;
-            }
-        }
-    }
-    // Every node starts in a cluster of its own; a branch between two makes them one.
-    let mut cluster_of: Vec<usize> = (0..count).collect();
-    for branch in branches {
-        let (from, g) = (branch.from, branch.conductance_s);
-        conductance[[from, from]] += g;
-        if let BranchEnd::Node(to) = branch.to {
-            conductance[[to, to]] += g;
-            conductance[[from, to]] -= g;
-            conductance[[to, from]] -= g;
-            let (kept, merged) = (cluster_of[from], cluster_of[to]);
-            for cluster in &mut cluster_of {
-                if *cluster == merged {
-                    *cluster = kept;
-                }
-            }
-        }
-    }
-    (0..count)
-        .map(|id| {
-            (0..count)
-                .filter(|&node| cluster_of[node] == id)
-                .collect::<Vec<usize>>()
-        })
-        .filter(|nodes| !nodes.is_empty())
-        .map(|nodes| {
-            let mut loads: Vec<(usize, Load)> = network
-                .inputs
-                .iter()
-                .filter(|input| input.clamps.any() && nodes.contains(&input.node))
-                .map(|input| {
-                    let clamps = input.clamps.with_middle(middle_v);
-                    (input.node, Load::Clamps(clamps))
-                })
-                .collect();
-            if nodes.contains(&DRIVER_NODE) && !network.source.is_steady() {
-                loads.push((DRIVER_NODE, Load::DriverChange));
-            }
-            let block = Array2::from_shape_fn((nodes.len(), nodes.len()), |(row, column)| {
-                conductance[[nodes[row], nodes[column]]]
-            });
-            Cluster::new(nodes, &block, loads)
-        })
-        .collect()
 }

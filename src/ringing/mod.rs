@@ -17,14 +17,16 @@ mod march;
 mod model;
 mod network;
 mod rest;
+mod settled;
 mod source;
 mod steps;
 mod travelling;
 
 pub use clamp::Clamps;
-pub use march::{MarchReport, Settled, SettledWaveform, Taken, WaveRecord, settle, settle_lines};
+pub use march::{settle, settle_lines};
 pub use model::{Model, line_models};
 pub use network::{Branch, BranchEnd, DRIVER_NODE, Input, Network, Span};
 pub use rest::rest_levels_v;
+pub use settled::{MarchReport, Settled, SettledWaveform, Taken, WaveRecord};
 pub use source::Source;
 pub use steps::{Pace, Stretch};

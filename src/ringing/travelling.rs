@@ -67,8 +67,13 @@ impl Bypassed {
 }
 
 impl TravellingLine {
-    /// A line at rest. `None` where its delay is too short for the step; `round` in steps.
-    pub(super) fn new(nodes: [usize; 2], model: &Model, step_s: f64, round: usize) -> Option<Self> {
+    /// A line at rest. `None` where its delay is too short for the step; `period` in steps.
+    pub(super) fn new(
+        nodes: [usize; 2],
+        model: &Model,
+        step_s: f64,
+        period: usize,
+    ) -> Option<Self> {
         let delay_steps = model.delay_s / step_s;
         if delay_steps < Delay::SHORTEST {
             return None;
@@ -81,7 +86,7 @@ impl TravellingLine {
             nodes,
             conductance_s: both(1.0 / (line_ohm + bypassed.companion_ohm[0])),
             source_a: [0.0; 2],
-            waves: Delay::new(delay_steps, round),
+            waves: Delay::new(delay_steps, period),
             propagation: Filter::new(&model.propagation, step_s),
             arrived_v: [0.0; 2],
             reflection,
@@ -149,8 +154,8 @@ impl TravellingLine {
         node_v[0] * current_a[0] + node_v[1] * current_a[1]
     }
 
-    /// The waves that set out from both ends in the last round.
-    pub(super) fn last_round(&self) -> [Vec<f64>; 2] {
-        self.waves.last_round()
+    /// The waves that set out from both ends in the last period.
+    pub(super) fn last_period(&self) -> [Vec<f64>; 2] {
+        self.waves.last_period()
     }
 }

@@ -25,13 +25,10 @@ struct Powers {
 }
 
 impl Powers {
-    /// Marches one more round of a settled net and watches every part. Voltages are counted from the middle of the
+    /// Marches one more period of a settled net and watches every part. Voltages are counted from the middle of the
     /// driver's levels, which shifts no power: all currents into the net add up to none.
     fn of(march: &mut March) -> Self {
         let steps = march.drive.len();
-        if march.mirrored {
-            march.negate();
-        }
         let mut records = vec![vec![0.0; steps]; 4 + march.lines.len()];
         for step in 0..steps {
             march.one_step(step);
@@ -51,7 +48,7 @@ impl Powers {
             }
             for input in &march.network.inputs {
                 let input_v = voltage_v[input.node];
-                let clamps = input.clamps.with_middle(march.middle_v);
+                let clamps = input.clamps.counted_from(march.middle_v);
                 records[3][step] += input_v * clamps.load(input_v).0;
             }
             for (line, record) in march.lines.iter().zip(&mut records[4..]) {
@@ -62,11 +59,7 @@ impl Powers {
         }
         let means: Vec<f64> = records
             .iter()
-            .map(|record| match march.mirrored {
-                // The other half of the period takes the same power.
-                true => record.iter().sum::<f64>() / steps as f64,
-                false => march.pace.mean(record, |power_w| power_w),
-            })
+            .map(|record| march.pace.mean(record, |power_w| power_w))
             .collect();
         Self {
             given_w: means[0],
