@@ -3,9 +3,9 @@
 use std::collections::BTreeMap;
 
 use super::super::{Driver, Layer, Net, Plane, ReceiverPart};
-use super::OfDraws;
 use super::definitions::Definitions;
 use super::net::NetReader;
+use super::nets::OfDraws;
 use crate::text::{Draw, Node, Noted, Report, Tolerance};
 
 /// The nets of a board file that have tolerances, on what its other parts define.
