@@ -11,6 +11,7 @@ mod signal;
 mod tolerance;
 mod values;
 mod verdict;
+mod warnings;
 
 pub use crate::watch::{Unwatched, Watch};
 pub use band::scan_band_hz;

@@ -4,7 +4,7 @@
 //! Chebyshev places of the plane and of each straight stretch of cable say all of it (Trefethen, Approximation Theory
 //! and Approximation Practice, 2013, chapters 4 and 8). They spare the antenna's many positions the many branches.
 
-use super::lights::Wave;
+use super::sources::Wave;
 use crate::LIGHT_SPEED_M_PER_S;
 use crate::radiation::plate::{BranchPlace, Plate, Wire};
 use num_complex::Complex64;

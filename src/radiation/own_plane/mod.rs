@@ -8,9 +8,12 @@
 mod cables;
 mod compression;
 mod footprint;
+mod kept;
 mod knots;
 mod lights;
 mod response;
+mod samples;
+mod sources;
 mod stand;
 
 pub use lights::Aim;
@@ -22,14 +25,12 @@ use crate::board::{Cable, CableRun, Plane};
 use crate::watch::Watch;
 use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
 use footprint::{Factors, Footprint};
+use kept::Kept;
 use lights::{Lights, Scan};
 use num_complex::Complex64;
 use response::Response;
 use stand::Stand;
-use std::collections::HashMap;
 use std::f64::consts::TAU;
-use std::sync::atomic::{AtomicUsize, Ordering};
-use std::sync::{Arc, Mutex};
 
 /// Up to here the solver has been compared with others; above, the mesh is that of this frequency.
 pub const COMPARED_TO_HZ: f64 = 2e9;
@@ -76,33 +77,6 @@ struct Variant {
     /// From the middle of everything to its farthest end, and from the turntable's axis, level.
     reach_m: f64,
     level_reach_m: f64,
-}
-
-/// Lights by variant, distance and frequency; so many bytes of them at most.
-#[derive(Debug, Default)]
-struct Kept {
-    lights: Mutex<HashMap<(usize, usize, u64), Arc<Lights>>>,
-    bytes: AtomicUsize,
-}
-
-/// Lights are kept up to this much memory.
-const MOST_BYTES: usize = 96 << 20;
-
-impl Kept {
-    fn or_made(&self, key: (usize, usize, u64), make: &dyn Fn() -> Lights) -> Arc<Lights> {
-        let known = |kept: &Self| kept.lights.lock().ok()?.get(&key).cloned();
-        if let Some(lights) = known(self) {
-            return lights;
-        }
-        let made = Arc::new(make());
-        let bytes = self.bytes.fetch_add(made.bytes(), Ordering::Relaxed) + made.bytes();
-        if bytes <= MOST_BYTES
-            && let Ok(mut lights) = self.lights.lock()
-        {
-            lights.insert(key, Arc::clone(&made));
-        }
-        made
-    }
 }
 
 /// Why the first cable that cannot hang as described on a site cannot; `None` if all can.
