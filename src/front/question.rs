@@ -229,7 +229,7 @@ pub fn cable_remarks(board: &Board, site: Site) -> Vec<String> {
     }
     if board.plane.is_none() {
         return vec![
-            "Cables are not yet in the figures, since the file gives no `plane` for them to hang on, \
+            "Cables are not in the figures, since the file gives no `plane` for them to hang on, \
              and they often dominate."
                 .into(),
         ];

@@ -304,6 +304,7 @@ mod tests {
         assert_eq!(
             keys(&net["worst"]),
             [
+                "antenna",
                 "distance_m",
                 "field_dbuv_per_m",
                 "frequency_hz",
@@ -311,7 +312,6 @@ mod tests {
                 "limit",
                 "limit_dbuv_per_m",
                 "mainly",
-                "antenna",
                 "margin_db"
             ]
         );
@@ -330,8 +330,8 @@ mod tests {
         assert_eq!(
             keys(&harmonic["fields"][0]),
             [
-                "cable_dbuv_per_m",
                 "antenna",
+                "cable_dbuv_per_m",
                 "charges_dbuv_per_m",
                 "distance_m",
                 "field_dbuv_per_m",

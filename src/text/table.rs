@@ -326,7 +326,7 @@ mod tests {
         let rows: Vec<_> = table.rows.iter().map(|row| table.cells(*row)).collect();
         assert_eq!(rows.len(), 3);
         let error = rows[0].clone().unwrap_err();
-        assert_eq!(error.position, Position { line: 4, column: 5 });
+        assert_eq!(error.position, Position { line: 4, column: 4 });
         assert_eq!(texts(rows[1].as_ref().unwrap()), ["B", "5 in"]);
         assert_eq!(texts(rows[2].as_ref().unwrap()), ["C", "4 in"]);
     }

@@ -16,7 +16,7 @@ use tempfile::TempDir;
 /// Stands on every table, picture and file.
 const NOTICE: &str = "pre-compliance estimate, not a compliance test";
 /// What is said of a board whose cables are not in its figures: the one place that knows these words.
-const CABLES_LEFT_OUT: &str = "Cables are not yet in the figures";
+const CABLES_LEFT_OUT: &str = "Cables are not in the figures";
 const BRACKWATER: &str = "examples/brackwater.yaml";
 
 /// A board of one net, to be written with other values.

@@ -117,3 +117,82 @@ fn retarded(k: f64, from_m: [f64; 3], to_m: [f64; 3]) -> ([f64; 3], f64, Complex
         Complex64::cis(-k * distance_m) / distance_m,
     )
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::{Floor, Plate, Structure, Wire};
+    use super::*;
+    use crate::ETA0_OHM;
+
+    fn dot(a: [f64; 3], b: [f64; 3]) -> f64 {
+        a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
+    }
+
+    /// Electric field upwards and magnetic field along x and y of a current element, at a point (Balanis, Antenna
+    /// Theory, section 4.2: the infinitesimal dipole).
+    fn of_element(k: f64, from_m: [f64; 3], along_am: [f64; 3], to_m: [f64; 3]) -> [Complex64; 3] {
+        let (apart, r, wave) = retarded(k, from_m, to_m);
+        let away = apart.map(|a| a / r);
+        let jkr = Complex64::new(0.0, k * r);
+        let lengthwise = dot(away, along_am);
+        let scale = Complex64::new(0.0, -k * ETA0_OHM / (4.0 * PI)) * wave;
+        let near = 1.0 / jkr + 1.0 / (jkr * jkr);
+        let e_z = scale * ((1.0 + near) * along_am[2] - (1.0 + 3.0 * near) * lengthwise * away[2]);
+        let h = wave * (jkr + 1.0) / (4.0 * PI * r);
+        let h_x = h * (along_am[1] * away[2] - along_am[2] * away[1]);
+        let h_y = h * (along_am[2] * away[0] - along_am[0] * away[2]);
+        [e_z, h_x, h_y]
+    }
+
+    /// Charges at nodes and currents between them make the field of as many current elements, which carry their
+    /// charges at their ends.
+    #[test]
+    fn a_hanging_cable_makes_the_field_of_its_current_elements() {
+        let frequency_hz = 120e6;
+        let k = TAU * frequency_hz / LIGHT_SPEED_M_PER_S;
+        let plate = Plate {
+            length_m: 0.16,
+            width_m: 0.1,
+        };
+        let wire = Wire {
+            points_m: vec![
+                [0.0, 0.05, 0.0],
+                [-0.1, 0.05, 0.0],
+                [-0.1, 0.05, -0.79],
+                [-0.7, 0.05, -0.79],
+            ],
+            radius_m: 1e-3,
+            attached: true,
+            grounded: false,
+        };
+        let floor = Floor {
+            axis: 2,
+            at_m: -0.8,
+        };
+        let structure = Structure::new(plate, &[wire], Some(floor), 1e9);
+        let solved = structure.at(frequency_hz);
+        let currents = solved.driven(vec![structure.gap_v(0, 0.3)]);
+        let point_m = [0.05, 0.03, 0.0];
+        let stray = &structure.stray(frequency_hz, &[point_m])[0];
+        let mut expected = [Complex64::ZERO; 3];
+        for (place, current_a) in solved.branches().iter().zip(currents[0].branches_a()) {
+            let (at_m, along_m) = (place.centre_m, place.along_m);
+            let mut elements = vec![(floor.mirrored_m(at_m), floor.image_way(along_m))];
+            if at_m[2] != 0.0 {
+                elements.push((at_m, along_m));
+            }
+            for (at_m, along_m) in elements {
+                let found = of_element(k, at_m, along_m, point_m);
+                for (sum, part) in expected.iter_mut().zip(found) {
+                    *sum += current_a * part;
+                }
+            }
+        }
+        for (kind, expected) in expected.into_iter().enumerate() {
+            let pairs = stray[kind].iter().zip(currents[0].branches_a());
+            let found: Complex64 = pairs.map(|(factor, current)| factor * current).sum();
+            let off = (found - expected).norm() / expected.norm();
+            assert!(off < 0.02, "{kind}: {found} {expected}");
+        }
+    }
+}

@@ -28,7 +28,7 @@ const FEWEST_CELLS: f64 = 7.0;
 const CELL_WAVELENGTHS: f64 = 0.1;
 /// The longest wire segment, metres and wavelengths.
 const SEGMENT_M: f64 = 25e-3;
-const SEGMENT_WAVELENGTHS: f64 = 0.06;
+const SEGMENT_WAVELENGTHS: f64 = 0.04;
 
 /// Where a branch lies.
 #[derive(Debug, Clone, Copy, PartialEq)]
