@@ -165,17 +165,19 @@ fn air_line(impedance_ohm: f64, length_m: f64, height_m: f64) -> PathItem {
     })
 }
 
-/// Full-wave rows of a wire over a perfect plane, each end with an upright wire of the height. Those carry
-/// the wave too: the line is as long as wire and height together, for its waves and for its field.
-#[test]
-fn full_wave_over_a_large_plane() {
-    let file: serde_json::Value =
-        serde_json::from_str(include_str!("reference/large_plane.json")).expect("it is JSON");
+/// Our field against that of full-wave rows, in dB, nearest first, and what each row is.
+///
+/// The rows are of a wire over a perfect plane, each end with an upright wire of the height. Those carry the
+/// wave too: the line is as long as wire and height together, for its waves and for its field.
+fn off_full_wave_db(table: &str, lowest_hz: f64) -> Vec<(f64, String)> {
+    let file: serde_json::Value = serde_json::from_str(table).expect("it is JSON");
     let rows = file["rows"].as_array().expect("a list of rows");
+    let number = |row: &serde_json::Value, key: &str| row[key].as_f64().expect("a number");
     let mut off_db: Vec<(f64, String)> = rows
         .iter()
+        .filter(|row| number(row, "frequency_hz") >= lowest_hz)
         .map(|row| {
-            let number = |key: &str| row[key].as_f64().expect("a number");
+            let number = |key: &str| number(row, key);
             let (frequency_hz, load) =
                 (number("frequency_hz"), row["load"].as_str().expect("text"));
             let height_m = number("height_mm") * 1e-3;
@@ -203,21 +205,46 @@ fn full_wave_over_a_large_plane() {
         })
         .collect();
     off_db.sort_by(|a, b| a.0.abs().total_cmp(&b.0.abs()));
-    let at = |share: f64| {
+    off_db
+}
+
+/// Prints and returns median, 95 % and worst.
+fn said_of(source: &str, off_db: &[(f64, String)]) -> [f64; 3] {
+    let [median_db, most_db, worst_db] = [0.5, 0.95, 1.0].map(|share| {
         off_db[(share * off_db.len() as f64).ceil() as usize - 1]
             .0
             .abs()
-    };
-    let (median_db, most_db, worst_db) = (at(0.5), at(0.95), at(1.0));
+    });
     println!(
-        "{} points, median {median_db:.2} dB, 95 % {most_db:.2} dB, worst {worst_db:.2} dB",
+        "{source}: {} points, median {median_db:.2} dB, 95 % {most_db:.2} dB, worst {worst_db:.2} dB",
         off_db.len()
     );
     for (_, said) in off_db.iter().rev().take(6) {
         println!("  {said}");
     }
+    [median_db, most_db, worst_db]
+}
+
+/// Rows of an antenna program, kept as they came. At 30 MHz its weak radiators are 1 to 2 dB too strong: `short`
+/// against the small loop (tests/reference/large_plane.py prints it), `cmos` against the table below.
+#[test]
+fn full_wave_over_a_large_plane() {
+    let off_db = off_full_wave_db(include_str!("reference/large_plane.json"), 0.0);
+    let [median_db, most_db, worst_db] = said_of("large_plane.json", &off_db);
     assert_eq!(off_db.len(), 80);
     assert!(median_db <= 0.3 && most_db <= 1.2 && worst_db <= 3.0);
+}
+
+/// The same nets solved by tests/reference/large_plane.py, a thin-wire method of moments (momwire) whose table
+/// can be made again. Judged from 50 MHz up.
+#[test]
+fn wires_solved_by_moments_over_a_large_plane() {
+    let table = include_str!("reference/large_plane_wire.json");
+    let off_db = off_full_wave_db(table, 50e6);
+    let [median_db, most_db, _] = said_of("large_plane_wire.json from 50 MHz", &off_db);
+    assert_eq!(off_db.len(), 72);
+    assert!(median_db <= 0.5 && most_db <= 1.5);
+    said_of("large_plane_wire.json, all", &off_full_wave_db(table, 0.0));
 }
 
 /// A short line into a short is a closed loop, and the plane doubles its field (Paul, Scully & Steffka, 3rd
