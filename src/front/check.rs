@@ -12,7 +12,7 @@ use ringfield::study::{NetResult, Verdict, check_drawn};
 
 use super::options;
 use super::output::{self, Output, check_places};
-use super::pictures::pictures;
+use super::pictures::{MorePictures, pictures};
 use super::progress::Progress;
 use super::question::{Asked, Question};
 use super::{Ending, Refusal};
@@ -39,6 +39,9 @@ pub struct Options {
     #[arg(long, value_name = "DIR")]
     plot: Option<PathBuf>,
 
+    #[command(flatten)]
+    more: MorePictures,
+
     /// Write one settled period as CSV; with several nets, each goes to a file of its own with the net's name put
     /// before the extension of FILE
     #[arg(long, value_name = "FILE")]
@@ -60,9 +63,14 @@ pub fn run(options: &Options) -> Result<Ending, Refusal> {
 
     let incomplete = asked.is_incomplete();
     let varied = asked.varied.take();
+    let (board, setup) = (asked.board.clone(), asked.setup.clone());
     let report = report(asked, varied.as_ref(), options.draws)?;
     let several = report.nets.len() + report.unusable.len() > 1;
-    output::write(outputs(options, &report, several))?;
+    let mut outputs = outputs(options, &report, several);
+    if let Some(folder) = &options.plot {
+        outputs.extend(options.more.of_board(&report, &board, &setup, folder));
+    }
+    output::write(outputs)?;
     output::print(&answer(options, &report))?;
 
     let fails = |net: &NetResult| net.verdict == Verdict::LikelyFail;
@@ -148,7 +156,7 @@ fn outputs(options: &Options, report: &CheckReport, several: bool) -> Vec<Output
         let nets: Vec<_> = report.nets.iter().zip(&names).collect();
         outputs.par_extend(
             nets.par_iter()
-                .flat_map(|(net, name)| pictures(report, net, &folder.join(name))),
+                .flat_map(|(net, name)| pictures(report, net, &folder.join(name), &options.more)),
         );
     }
     outputs

@@ -22,8 +22,8 @@ pub use csv::{harmonics_csv, waveform_csv};
 pub use json::check_json;
 pub use limit_listing::{limit_at_listing, limit_listing};
 pub use plot::{
-    Picture, spectrum_picture, sweep_picture, variants_spectrum_picture, variants_waveform_picture,
-    waveform_picture,
+    Picture, antenna_picture, plan_picture, scan_picture, spectrum_parts_picture, spectrum_picture,
+    sweep_picture, variants_spectrum_picture, variants_waveform_picture, waveform_picture,
 };
 pub use remedy::{RemedyReport, remedy_csv, remedy_json, remedy_table};
 pub use table::{check_table, march_table};

@@ -13,6 +13,7 @@ mod lights;
 mod response;
 mod stand;
 
+pub use cables::root as cable_root;
 pub use lights::Aim;
 
 use super::plate::{Plate, Wire};
@@ -273,6 +274,11 @@ pub struct ScanMap {
 }
 
 impl ScanMap {
+    /// How many angles it has.
+    pub fn columns(&self) -> usize {
+        self.fields_v_per_m[0].first().map_or(0, Vec::len)
+    }
+
     /// The largest reading.
     pub fn largest_v_per_m(&self) -> f64 {
         let all = self.fields_v_per_m.iter().flatten().flatten();

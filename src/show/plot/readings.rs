@@ -14,6 +14,8 @@ pub(super) struct Line {
     pub frequency_hz: f64,
     pub level: f64,
     pub loop_area: Option<f64>,
+    /// What loops, charged traces and cables make of it.
+    pub parts: [Option<f64>; 3],
 }
 
 /// The harmonic with the smallest margin at a distance.
@@ -60,6 +62,12 @@ pub(super) fn lines(net: &NetResult, distance_m: f64) -> Vec<Line> {
                 frequency_hz: harmonic.frequency_hz,
                 level: field.field_dbuv_per_m.filter(|level| level.is_finite())?,
                 loop_area: field.loop_area_dbuv_per_m.filter(|level| level.is_finite()),
+                parts: [
+                    field.loops_dbuv_per_m,
+                    field.charges_dbuv_per_m,
+                    field.cable_dbuv_per_m,
+                ]
+                .map(|level| level.filter(|level| level.is_finite())),
             })
         })
         .collect()
@@ -97,7 +105,7 @@ pub(super) fn level_range(
         .collect();
     let levels = lines
         .iter()
-        .flat_map(|l| [Some(l.level), l.loop_area])
+        .flat_map(|l| [Some(l.level), l.loop_area].into_iter().chain(l.parts))
         .flatten();
     let highest = levels
         .clone()
