@@ -15,7 +15,7 @@ use ringfield::study::{NetResult, Verdict, check_drawn};
 
 use super::options;
 use super::output::{self, Output, check_places};
-use super::pictures::pictures;
+use super::pictures::{MorePictures, pictures};
 use super::progress::Progress;
 use super::question::{Asked, Question};
 use super::{Ending, Refusal};
@@ -41,6 +41,9 @@ pub struct Options {
     /// Write pictures of spectra and waveforms (PNG and SVG) to this folder
     #[arg(long, value_name = "DIR")]
     plot: Option<PathBuf>,
+
+    #[command(flatten)]
+    more: MorePictures,
 
     /// Write one settled period as CSV; with several nets, each goes to a file of its own with the net's name put
     /// before the extension of FILE
@@ -72,9 +75,14 @@ pub fn run(options: &Options) -> Result<Ending, Refusal> {
     } else {
         Vec::new()
     };
+    let (board, setup) = (asked.board.clone(), asked.setup.clone());
     let report = report(asked, varied.as_ref(), options.draws)?;
     let several = report.nets.len() + report.unusable.len() > 1;
-    output::write(outputs(options, &report, several))?;
+    let mut outputs = outputs(options, &report, several);
+    if let Some(folder) = &options.plot {
+        outputs.extend(options.more.of_board(&report, &board, &setup, folder));
+    }
+    output::write(outputs)?;
     output::print(&answer(options, &report, &explanations))?;
 
     let fails = |net: &NetResult| net.verdict == Verdict::LikelyFail;
@@ -168,7 +176,7 @@ fn outputs(options: &Options, report: &CheckReport, several: bool) -> Vec<Output
         let nets: Vec<_> = report.nets.iter().zip(&names).collect();
         outputs.par_extend(
             nets.par_iter()
-                .flat_map(|(net, name)| pictures(report, net, &folder.join(name))),
+                .flat_map(|(net, name)| pictures(report, net, &folder.join(name), &options.more)),
         );
     }
     outputs

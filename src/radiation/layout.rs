@@ -5,10 +5,12 @@ use crate::line::Place;
 use crate::ringing::Network;
 
 /// The outer lines of a net as straight segments, and how much of the net they leave out.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, Default)]
 pub struct Layout {
     /// The radiating segments.
     pub segments: Vec<Segment>,
+    /// The straight pieces of the lines that do not radiate, from end to end.
+    pub quiet_m: Vec<[[f64; 2]; 2]>,
     /// Length of all lines between two planes.
     pub buried_m: f64,
     /// Length of all lines.
@@ -51,11 +53,7 @@ impl Layout {
     /// On a plane of known size a path without points lies straight and centred, or at the net's distance from the
     /// nearest edge; `along` is which way.
     pub fn of(network: &Network, net: &Net, plane: Option<&Plane>) -> Self {
-        let mut layout = Self {
-            segments: Vec::new(),
-            buried_m: 0.0,
-            total_m: 0.0,
-        };
+        let mut layout = Self::default();
         let direction = match net.along {
             Along::Length => [1.0, 0.0],
             Along::Width => [0.0, 1.0],
@@ -106,6 +104,8 @@ impl Layout {
                         height_m,
                         permittivity: line.permittivity,
                     });
+                } else {
+                    layout.quiet_m.push([pair[0], pair[1]]);
                 }
                 from_near_m += length_m;
             }

@@ -20,6 +20,7 @@ pub use layout::{Layout, Segment};
 pub use loop_area::loop_area_v_per_m;
 pub use own_plane::{
     Aim, COMPARED_TO_HZ, Footing, OwnPlane, ScanMap, UNKNOWN_CABLE_LENGTHS_M, cable_objection,
+    cable_root,
 };
 pub use site::{
     FLOOR_ABSORBED_ABOVE_HZ, Heights, Polarisation, Site, TABLE_HEIGHT_M, TestSite, two_ray_factors,

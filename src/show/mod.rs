@@ -25,8 +25,9 @@ pub use explain::explanations_text;
 pub use json::check_json;
 pub use limit_listing::{limit_at_listing, limit_listing};
 pub use plot::{
-    Picture, board_spectrum_picture, ranking_picture, spectrum_picture, sweep_picture,
-    variants_spectrum_picture, variants_waveform_picture, waveform_picture,
+    Picture, antenna_picture, board_spectrum_picture, plan_picture, ranking_picture, scan_picture,
+    spectrum_parts_picture, spectrum_picture, sweep_picture, variants_spectrum_picture,
+    variants_waveform_picture, waveform_picture,
 };
 pub use rank::{RankReport, rank_json, rank_table, ranking_csv};
 pub use remedy::{RemedyReport, remedy_csv, remedy_json, remedy_table};

@@ -37,6 +37,20 @@ pub struct CheckSetup {
 }
 
 impl CheckSetup {
+    /// Few frequencies, one distance.
+    #[cfg(test)]
+    pub(super) fn for_tests() -> Self {
+        Self {
+            limits: crate::limit::default_limits(),
+            distances_m: vec![3.0],
+            site: Site::OpenArea,
+            heights: Heights::default(),
+            lowest_frequency_hz: 30e6,
+            top_frequency_hz: 400e6,
+            model_sigma_db: super::MODEL_SIGMA_DB,
+        }
+    }
+
     /// Where the antenna stands.
     pub fn test_site(&self) -> TestSite {
         TestSite {
@@ -71,6 +85,32 @@ pub struct RungNet {
     /// What the field of one line is multiplied by.
     gain: f64,
     warnings: Vec<String>,
+}
+
+impl RungNet {
+    /// Where its radiating lines lie.
+    pub(super) fn layout(&self) -> &Layout {
+        &self.layout
+    }
+
+    /// The net laid on an antenna, at the harmonic at a place of its spectrum.
+    pub(super) fn lit<'a>(&'a self, footing: &'a Footing, place: usize) -> LitNet<'a> {
+        LitNet {
+            frequency_hz: self.spectrum.frequency_hz(place),
+            footing,
+            segments: lit_segments(&self.network, &self.layout, &self.spectrum, place),
+        }
+    }
+
+    /// The same by the harmonic's number; `None` where it was not worked out.
+    pub(super) fn lit_harmonic<'a>(
+        &'a self,
+        footing: &'a Footing,
+        number: usize,
+    ) -> Option<LitNet<'a>> {
+        let harmonics = &self.spectrum.harmonics;
+        (harmonics.contains(&number)).then(|| self.lit(footing, number - harmonics.start()))
+    }
 }
 
 /// Ringing and spectrum of one net.
@@ -226,14 +266,7 @@ fn readings(
     let lit: Vec<LitNet> = shared
         .harmonics
         .iter()
-        .map(|&(number, place)| {
-            let net = &nets[number];
-            LitNet {
-                frequency_hz: net.spectrum.frequency_hz(place),
-                footing: &footings[number],
-                segments: lit_segments(&net.network, &net.layout, &net.spectrum, place),
-            }
-        })
+        .map(|&(number, place)| nets[number].lit(&footings[number], place))
         .collect();
     antenna.readings(shared.frequency_hz, &lit)
 }
@@ -364,7 +397,7 @@ fn harmonics(net: &RungNet, readings: &[Vec<Reading>], setup: &CheckSetup) -> Ve
 }
 
 /// A field strength as a level; zero has none.
-fn level_dbuv_per_m(field_v_per_m: f64) -> Option<f64> {
+pub(super) fn level_dbuv_per_m(field_v_per_m: f64) -> Option<f64> {
     (field_v_per_m > 0.0).then(|| 20.0 * (field_v_per_m * 1e6).log10())
 }
 

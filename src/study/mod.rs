@@ -1,12 +1,15 @@
 //! Studies: what a user asks of the pipeline, answered for one net or many.
 
+mod antenna;
 mod band;
 pub mod change;
 mod check;
 pub mod compare;
 pub mod explain;
+mod plan;
 mod rank;
 pub mod remedy;
+mod scan;
 mod signal;
 mod tolerance;
 mod values;
@@ -14,14 +17,20 @@ mod verdict;
 mod warnings;
 
 pub use crate::watch::{Unwatched, Watch};
+pub use antenna::{
+    BoardAntenna, Resonance, Resonator, SourceCurve, UNIT_AREA_M2, UNIT_CAPACITANCE_F,
+    UNIT_CURRENT_A, UNIT_HEIGHT_M, UNIT_LENGTH_M, UNIT_VOLTAGE_V, UnitSource, antenna_curves,
+};
 pub use band::scan_band_hz;
 pub use check::{
     CheckSetup, RungNet, board_antenna, cable_objection, check, judge_all, ring, ring_all,
 };
+pub use plan::{BoardPlan, PlannedCable, PlannedNet, board_plan};
 pub use rank::{
     BoardSum, Change, Filter, OWNERS_NAMED, Owner, RankedNet, Ranking, Remedy, SumLevel, SumLine,
     SumWorst, Tally, rank,
 };
+pub use scan::{NetScan, Scans, scan_nets};
 pub use signal::{ClampSignal, ReceiverSignal, Signal};
 pub use tolerance::{
     Carried, CarriedBy, FEWEST_DRAWS, MOST_DRAWS, MarginSpread, Spread, check_drawn, spread_all,

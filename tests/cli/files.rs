@@ -80,7 +80,7 @@ fn odd_names_make_sound_files() {
 }
 
 /// A picture holds more than its paper: some pixels in a hundred differ from it, in many shades.
-fn assert_drawn(path: &Path) {
+pub fn assert_drawn(path: &Path) {
     let what = path.display();
     let file = fs::File::open(path).expect("a picture");
     let mut reader = png::Decoder::new(std::io::BufReader::new(file))
@@ -105,7 +105,7 @@ fn assert_drawn(path: &Path) {
 }
 
 /// Every tag is closed in its order, and nothing reserved stands in text or attributes.
-fn assert_well_formed(svg: &str, what: &str) {
+pub fn assert_well_formed(svg: &str, what: &str) {
     assert!(svg.contains("<svg"), "{what}");
     let mut open: Vec<&str> = Vec::new();
     let mut rest = svg;

@@ -4,6 +4,7 @@ mod answers;
 mod documents;
 mod draws;
 mod files;
+mod pictures;
 mod rank;
 mod readings;
 mod refusals;

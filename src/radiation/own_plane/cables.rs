@@ -78,8 +78,8 @@ pub(super) fn objection(
     })
 }
 
-/// Where a cable leaves the plane, and which way.
-fn root(plane: &Plane, cable: &Cable) -> ([f64; 3], [f64; 3]) {
+/// Where a cable leaves the plane, and which way, in the plane's frame.
+pub fn root(plane: &Plane, cable: &Cable) -> ([f64; 3], [f64; 3]) {
     let (along_m, middle_m) = match cable.edge {
         Edge::Left | Edge::Right => (plane.width_m, plane.width_m / 2.0),
         Edge::Front | Edge::Back => (plane.length_m, plane.length_m / 2.0),

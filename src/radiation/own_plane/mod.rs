@@ -16,6 +16,7 @@ mod samples;
 mod sources;
 mod stand;
 
+pub use cables::root as cable_root;
 pub use lights::Aim;
 
 use super::plate::{Plate, Wire};
@@ -281,6 +282,11 @@ pub struct ScanMap {
 }
 
 impl ScanMap {
+    /// How many angles it has.
+    pub fn columns(&self) -> usize {
+        self.fields_v_per_m[0].first().map_or(0, Vec::len)
+    }
+
     /// The largest reading.
     pub fn largest_v_per_m(&self) -> f64 {
         let all = self.fields_v_per_m.iter().flatten().flatten();

@@ -184,6 +184,7 @@ fn lines(report: &RankReport, distance_m: f64) -> Vec<Line> {
                 number: 0,
                 frequency_hz: line.frequency_hz,
                 level: level.field_dbuv_per_m,
+                parts: [None; 3],
                 beside: (level.field_dbuv_per_m - by_power > APART_DB).then_some(by_power),
             })
         })

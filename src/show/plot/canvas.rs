@@ -8,7 +8,7 @@ use super::paint::text_width;
 use super::picture::{Anchor, Marker, Pen, Picture, Point, Rect, Text};
 use super::place::Obstacles;
 use super::readings::{Line, WorstHere, limit_pieces};
-use super::{BLACK, BLUE, GREEN, GREY, ORANGE, PURPLE, VERMILLION};
+use super::{BLACK, BLUE, GREEN, GREY, ORANGE, PURPLE, VERMILLION, WHITE};
 use crate::limit::LimitAt;
 use crate::show::words;
 
@@ -21,10 +21,17 @@ const COST_BESIDE: f64 = 3.0;
 
 /// From line to line of a text in a box.
 const BOX_LINE: f64 = LABEL_SIZE + 4.0;
+/// Parts of a field stand no farther apart than this.
+const MOST_ASIDE: f64 = 7.0;
+/// How the parts of a field are told apart, in the order of [`Line::parts`].
+pub(super) const PARTS: [(&str, Marker, RGBColor); 3] = [
+    ("of it by loops", Marker::Triangle, VERMILLION),
+    ("by charged traces", Marker::Square, GREEN),
+    ("by cables", Marker::Diamond, ORANGE),
+];
+
 /// Radius of the ring around the worst harmonic.
 const RING: f64 = 7.0;
-
-const WHITE: RGBColor = RGBColor(255, 255, 255);
 
 /// How the limits differ without colour: each has its own dashes.
 fn limit_pen(index: usize) -> Pen {
@@ -83,6 +90,33 @@ impl Canvas {
             self.picture
                 .marker(Marker::HollowDiamond, at, radius + 0.4, GREY);
             self.obstacles.add_rect(around(at, radius), COST_BESIDE);
+        }
+    }
+
+    /// Draws what each harmonic is made of, beside its stem.
+    pub fn draw_parts(&mut self, lines: &[Line]) {
+        let lowest = self.y.range().0;
+        let crowded = lines.len() > 60;
+        let radius = if crowded { 2.4 } else { 3.6 };
+        let shown: Vec<&Line> = lines.iter().filter(|line| line.level >= lowest).collect();
+        for (number, line) in shown.iter().enumerate() {
+            let x = self.x.place(line.frequency_hz / 1e6);
+            // Total and parts share the way to the next stem.
+            let next = shown
+                .get(number + 1)
+                .or(number.checked_sub(1).map(|i| &shown[i]));
+            let gap = next.map_or(MOST_ASIDE, |next| {
+                (self.x.place(next.frequency_hz / 1e6) - x).abs() / 4.0
+            });
+            let aside = gap.min(MOST_ASIDE);
+            for ((part, level), slot) in PARTS.iter().zip(line.parts).zip([-1.0, 1.0, 2.0]) {
+                let Some(level) = level.filter(|level| *level >= lowest) else {
+                    continue;
+                };
+                let at = (x + slot * aside, self.y.place(level));
+                self.picture.marker(part.1, at, radius, part.2);
+                self.obstacles.add_rect(around(at, radius), COST_BESIDE);
+            }
         }
     }
 
@@ -360,7 +394,7 @@ fn extent(pieces: &[Vec<Point>], left: f64, right: f64) -> Option<(f64, f64, f64
     highest.is_finite().then_some((highest, lowest, covered))
 }
 
-fn around((x, y): Point, radius: f64) -> Rect {
+pub(super) fn around((x, y): Point, radius: f64) -> Rect {
     Rect {
         left: x,
         top: y,
@@ -371,7 +405,7 @@ fn around((x, y): Point, radius: f64) -> Rect {
 }
 
 /// The point some way from one towards another.
-fn toward(from: Point, to: Point, way: f64) -> Point {
+pub(super) fn toward(from: Point, to: Point, way: f64) -> Point {
     let length = (to.0 - from.0).hypot(to.1 - from.1).max(way);
     (
         from.0 + way / length * (to.0 - from.0),

@@ -15,6 +15,8 @@ pub(super) struct Line {
     pub level: f64,
     /// A level to compare with.
     pub beside: Option<f64>,
+    /// What loops, charged traces and cables make of it.
+    pub parts: [Option<f64>; 3],
 }
 
 /// The harmonic with the smallest margin at a distance.
@@ -61,6 +63,12 @@ pub(super) fn lines(net: &NetResult, distance_m: f64) -> Vec<Line> {
                 frequency_hz: harmonic.frequency_hz,
                 level: field.field_dbuv_per_m.filter(|level| level.is_finite())?,
                 beside: field.loop_area_dbuv_per_m.filter(|level| level.is_finite()),
+                parts: [
+                    field.loops_dbuv_per_m,
+                    field.charges_dbuv_per_m,
+                    field.cable_dbuv_per_m,
+                ]
+                .map(|level| level.filter(|level| level.is_finite())),
             })
         })
         .collect()
@@ -98,7 +106,7 @@ pub(super) fn level_range(
         .collect();
     let levels = lines
         .iter()
-        .flat_map(|l| [Some(l.level), l.beside])
+        .flat_map(|l| [Some(l.level), l.beside].into_iter().chain(l.parts))
         .flatten();
     let highest = levels
         .clone()

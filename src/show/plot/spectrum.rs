@@ -1,11 +1,11 @@
 //! The line spectrum of a net's field at one distance, against the limit lines.
 
 use super::axis::Axis;
-use super::canvas::Canvas;
+use super::canvas::{Canvas, PARTS};
 use super::page::{LegendEntry, PANEL_BOTTOM, PANEL_LEFT, PANEL_RIGHT, legend, page, panel};
 use super::picture::{Marker, Picture, Rect};
 use super::place::Obstacles;
-use super::readings::{frequency_range, level_range, lines, worst};
+use super::readings::{Line, frequency_range, level_range, lines, worst};
 use super::{BLUE, GREY};
 use crate::limit::LimitAt;
 use crate::show::{CheckReport, words};
@@ -13,7 +13,19 @@ use crate::study::NetResult;
 
 /// The spectrum of one net's field at one distance.
 pub fn spectrum_picture(report: &CheckReport, net: &NetResult, distance_m: f64) -> Picture {
-    let lines = lines(net, distance_m);
+    drawn(report, net, distance_m, false)
+}
+
+/// The same, and beside every stem what loops, charged traces and cables make of it.
+pub fn spectrum_parts_picture(report: &CheckReport, net: &NetResult, distance_m: f64) -> Picture {
+    drawn(report, net, distance_m, true)
+}
+
+fn drawn(report: &CheckReport, net: &NetResult, distance_m: f64, parts: bool) -> Picture {
+    let mut lines = lines(net, distance_m);
+    if !parts {
+        lines.iter_mut().for_each(|line| line.parts = [None; 3]);
+    }
     let limits: Vec<&LimitAt> = report.limits_at(distance_m).collect();
 
     let mut picture = page(
@@ -32,7 +44,7 @@ pub fn spectrum_picture(report: &CheckReport, net: &NetResult, distance_m: f64) 
     let frequencies = frequency_range(net, &lines);
     let levels = level_range(&lines, &limits, frequencies);
     let hidden = lines.iter().filter(|line| line.level < levels.0).count();
-    let top = legend(&mut picture, &legend_entries(hidden));
+    let top = legend(&mut picture, &legend_entries(hidden, &lines));
     let rect = Rect {
         left: PANEL_LEFT,
         top,
@@ -57,6 +69,7 @@ pub fn spectrum_picture(report: &CheckReport, net: &NetResult, distance_m: f64) 
         (Some("Frequency (MHz)"), "Field strength (dBµV/m)"),
     );
     canvas.draw_harmonics(&lines);
+    canvas.draw_parts(&lines);
     let drawn = canvas.draw_limits(&limits, false);
     let worst = worst(report, distance_m, &lines).filter(|worst| worst.line.level >= levels.0);
     if let Some(worst) = &worst {
@@ -81,7 +94,7 @@ pub fn spectrum_picture(report: &CheckReport, net: &NetResult, distance_m: f64) 
     canvas.picture
 }
 
-fn legend_entries(hidden: usize) -> Vec<LegendEntry> {
+fn legend_entries(hidden: usize, lines: &[Line]) -> Vec<LegendEntry> {
     let entry = |label: &str, marker| LegendEntry {
         label: label.to_string(),
         pen: None,
@@ -94,6 +107,11 @@ fn legend_entries(hidden: usize) -> Vec<LegendEntry> {
             Some((Marker::HollowDiamond, GREY)),
         ),
     ];
+    for (place, (label, marker, colour)) in PARTS.into_iter().enumerate() {
+        if lines.iter().any(|line| line.parts[place].is_some()) {
+            entries.push(entry(label, Some((marker, colour))));
+        }
+    }
     match hidden {
         0 => {}
         1 => entries.push(entry("1 weaker harmonic lies below the range shown", None)),
@@ -108,7 +126,7 @@ fn legend_entries(hidden: usize) -> Vec<LegendEntry> {
 #[cfg(test)]
 mod tests {
     use crate::limit::limits_at;
-    use crate::show::plot::spectrum_picture;
+    use crate::show::plot::{spectrum_parts_picture, spectrum_picture};
     use crate::show::{NOTICE, samples};
 
     #[test]
@@ -127,6 +145,26 @@ mod tests {
             assert!(svg.contains(words), "{words}");
         }
         assert!(svg.starts_with("<svg width=\"1000\" height=\"620\" viewBox="));
+    }
+
+    #[test]
+    fn parts_are_drawn_on_request_alone() {
+        let mut net = samples::net("CAM_PCLK", 48e6, 20);
+        let report = samples::report(vec![]);
+        let parts = spectrum_parts_picture(&report, &net, 3.0).svg();
+        let plain = spectrum_picture(&report, &net, 3.0).svg();
+        for words in ["of it by loops", "by charged traces"] {
+            assert!(parts.contains(words) && !plain.contains(words), "{words}");
+        }
+        assert!(!parts.contains("by cables"));
+        // A triangle and a square for each harmonic, beside its stem, and in the legend.
+        let areas = |svg: &str| svg.matches("<polygon").count();
+        assert_eq!(areas(&parts) - areas(&plain), 2 * (20 + 1));
+        for field in net.harmonics.iter_mut().flat_map(|h| &mut h.fields) {
+            field.cable_dbuv_per_m = field.field_dbuv_per_m;
+        }
+        let cabled = spectrum_parts_picture(&report, &net, 3.0).svg();
+        assert!(cabled.contains("by cables"));
     }
 
     #[test]
