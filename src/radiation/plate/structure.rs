@@ -29,6 +29,8 @@ const CELL_WAVELENGTHS: f64 = 0.1;
 /// The longest wire segment, metres and wavelengths.
 const SEGMENT_M: f64 = 25e-3;
 const SEGMENT_WAVELENGTHS: f64 = 0.04;
+/// Shorter ones cost more than they tell: at 2 GHz this is 0.06 wavelengths.
+const SHORTEST_SEGMENT_M: f64 = 9e-3;
 
 /// Where a branch lies.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -115,7 +117,7 @@ impl Structure {
                 .collect();
             Axis::fitted(side_m, cells, &roots_m).cells
         });
-        let segment_m = SEGMENT_M.min(SEGMENT_WAVELENGTHS * wavelength_m);
+        let segment_m = (SEGMENT_WAVELENGTHS * wavelength_m).clamp(SHORTEST_SEGMENT_M, SEGMENT_M);
         Self::with_mesh(plate, wires, floor, cells, segment_m)
     }
 
