@@ -45,12 +45,14 @@ fn main() {
             };
             let (antenna, solved) =
                 timed(|| OwnPlane::new(&PLANE, &cables, test_site, &frequencies_hz, &Unwatched));
+            let first = reading(&antenna, &frequencies_hz, 1);
+            // The antenna keeps the light of places that it has worked out.
             let one = reading(&antenna, &frequencies_hz, 1);
             let eleven = reading(&antenna, &frequencies_hz, 11);
             println!(
                 "{label}, {site:?}, 3 m and 10 m: plane and cable {:.2} s, first net {:.2} s, each further net {:.1} ms",
                 solved.as_secs_f64(),
-                one.as_secs_f64(),
+                first.as_secs_f64(),
                 eleven.saturating_sub(one).as_secs_f64() * 1e3 / 10.0
             );
         }
