@@ -19,6 +19,17 @@ pub struct Question {
     #[arg(value_name = "BOARD")]
     pub board: PathBuf,
 
+    #[command(flatten)]
+    pub against: Against,
+
+    /// Only this net; may be repeated
+    #[arg(long, value_name = "NAME")]
+    pub net: Vec<String>,
+}
+
+/// What a board is laid against.
+#[derive(Debug, Args)]
+pub struct Against {
     /// A limit file; may be repeated [default: the built-in limits, see `ringfield limits`]
     #[arg(long, value_name = "FILE")]
     pub limit: Vec<PathBuf>,
@@ -38,10 +49,6 @@ pub struct Question {
     /// Heights that the antenna moves over
     #[arg(long, value_name = "LENGTHS", default_value = "1 m to 4 m", value_parser = options::antenna_heights)]
     pub antenna_heights: [f64; 2],
-
-    /// Only this net; may be repeated
-    #[arg(long, value_name = "NAME")]
-    pub net: Vec<String>,
 
     /// Highest frequency to look at [default: what 47 CFR 15.33 asks for, at least 1 GHz]
     #[arg(long, value_name = "FREQUENCY", value_parser = options::frequency)]
@@ -71,40 +78,39 @@ pub struct Asked {
 impl Question {
     /// Reads the files; says what is wrong with them.
     pub fn open(&self) -> Result<Asked, Refusal> {
-        let limits = match self.limit.as_slice() {
-            [] => default_limits(),
-            files => input::limits(files)?,
-        };
+        let limits = self.against.limits()?;
         let mut reading = read(&self.board)?;
         let varied = reading.varied.take();
-        // The whole board decides how far to scan, whichever nets are asked for.
-        let scan_hz = reading
-            .board
-            .as_ref()
-            .map(|board| scan_band_hz(board, &limits));
         let broken_elsewhere = reading.unusable.is_empty() && has_errors(&reading);
         let whole = reading.board.clone();
         let (board, unusable) = selected(reading, &self.board, &self.net)?;
-        let setup = self.setup(scan_hz.unwrap_or_default(), limits);
-        if let Some(objection) = cable_objection(&board, &setup) {
-            return Err(Refusal::new(objection));
-        }
+        let whole = whole.unwrap_or_else(|| board.clone());
+        // The whole board decides how far to scan, whichever nets are asked for.
+        let setup = self.against.setup(limits, &whole)?;
         Ok(Asked {
-            whole: whole.unwrap_or_else(|| board.clone()),
             board,
+            whole,
             unusable,
             setup,
             varied,
             broken_elsewhere,
         })
     }
+}
 
-    fn setup(
-        &self,
-        (lowest_frequency_hz, top_frequency_hz): (f64, f64),
-        limits: Vec<Limit>,
-    ) -> CheckSetup {
-        CheckSetup {
+impl Against {
+    /// The limits asked for.
+    pub fn limits(&self) -> Result<Vec<Limit>, Refusal> {
+        match self.limit.as_slice() {
+            [] => Ok(default_limits()),
+            files => input::limits(files),
+        }
+    }
+
+    /// What to measure of a whole board; refused where a cable cannot hang as described.
+    pub fn setup(&self, limits: Vec<Limit>, board: &Board) -> Result<CheckSetup, Refusal> {
+        let (lowest_frequency_hz, top_frequency_hz) = scan_band_hz(board, &limits);
+        let setup = CheckSetup {
             limits,
             distances_m: distances_m(&self.distance),
             site: self.site.into(),
@@ -115,6 +121,10 @@ impl Question {
             lowest_frequency_hz,
             top_frequency_hz: self.max_frequency.unwrap_or(top_frequency_hz),
             model_sigma_db: self.sigma,
+        };
+        match cable_objection(board, &setup) {
+            Some(objection) => Err(Refusal::new(objection)),
+            None => Ok(setup),
         }
     }
 }
@@ -127,23 +137,25 @@ impl Asked {
 
     /// Every limit at every distance.
     pub fn limits(&self) -> Vec<LimitAt> {
-        let distances = self.setup.distances_m.iter();
-        distances
-            .flat_map(|distance_m| limits_at(&self.setup.limits, *distance_m))
-            .collect()
+        limits_everywhere(&self.setup)
     }
 
     /// What concerns the whole board, in plain sentences.
     pub fn remarks(&self) -> Vec<String> {
-        cable_remarks(&self.board, self.setup.site)
-            .into_iter()
-            .chain(beyond_comparison(&self.board, &self.setup))
-            .collect()
+        remarks(&self.board, &self.setup)
     }
 }
 
+/// Every limit at every distance.
+pub fn limits_everywhere(setup: &CheckSetup) -> Vec<LimitAt> {
+    let distances = setup.distances_m.iter();
+    distances
+        .flat_map(|distance_m| limits_at(&setup.limits, *distance_m))
+        .collect()
+}
+
 /// The distances asked for, each once.
-pub fn distances_m(asked: &[f64]) -> Vec<f64> {
+fn distances_m(asked: &[f64]) -> Vec<f64> {
     let mut distances_m: Vec<f64> = Vec::new();
     for distance_m in asked {
         if !distances_m.contains(distance_m) {
@@ -206,8 +218,16 @@ fn unknown_net(name: &str, known: &[&str]) -> String {
     }
 }
 
+/// What concerns a whole board, in plain sentences.
+pub fn remarks(board: &Board, setup: &CheckSetup) -> Vec<String> {
+    cable_remarks(board, setup.site)
+        .into_iter()
+        .chain(beyond_comparison(board, setup))
+        .collect()
+}
+
 /// What has to be said of frequencies at which nothing was compared.
-pub fn beyond_comparison(board: &Board, setup: &CheckSetup) -> Option<String> {
+fn beyond_comparison(board: &Board, setup: &CheckSetup) -> Option<String> {
     (board.plane.is_some() && setup.top_frequency_hz > COMPARED_TO_HZ).then(|| {
         "Above 2 GHz the plane's and the cables' part in the figures has not been compared with any \
          other solution."
@@ -216,7 +236,7 @@ pub fn beyond_comparison(board: &Board, setup: &CheckSetup) -> Option<String> {
 }
 
 /// What has to be said about the cables.
-pub fn cable_remarks(board: &Board, site: Site) -> Vec<String> {
+fn cable_remarks(board: &Board, site: Site) -> Vec<String> {
     let Some(cables) = board.cables.as_deref() else {
         return vec![
             "The file does not say what hangs on the board (`cables: []` says that nothing does), \

@@ -4,15 +4,14 @@ use std::path::{Path, PathBuf};
 
 use clap::{Args, ValueEnum};
 use ringfield::board::Board;
-use ringfield::limit::{default_limits, limits_at};
-use ringfield::radiation::Heights;
 use ringfield::show::{RankReport, rank_json, rank_table, ranking_csv};
-use ringfield::study::{CheckSetup, Filter, Verdict, cable_objection, rank, scan_band_hz};
+use ringfield::study::{CheckSetup, Filter, Verdict, rank};
 
-use super::options::{self, SiteChoice};
+use super::options;
 use super::output::Output;
 use super::progress::Progress;
-use super::{Ending, Refusal, input, interrupt, output, pictures, question};
+use super::question::{self, Against};
+use super::{Ending, Refusal, interrupt, output, pictures};
 
 /// The board, what it is laid against, which nets to list, and where the answers go.
 #[derive(Debug, Args)]
@@ -45,33 +44,8 @@ pub struct Options {
     #[arg(long, value_enum, value_name = "VERDICT")]
     verdict: Vec<VerdictChoice>,
 
-    /// A limit file; may be repeated [default: the built-in limits, see `ringfield limits`]
-    #[arg(long, value_name = "FILE")]
-    limit: Vec<PathBuf>,
-
-    /// Distance of the antenna, 1 m to 30 m; may be repeated [default: 3 m and 10 m]
-    #[arg(long, value_name = "LENGTH", value_parser = options::distance)]
-    distance: Vec<f64>,
-
-    /// Site of the antenna
-    #[arg(long, value_enum, value_name = "SITE", default_value = "open-area")]
-    site: SiteChoice,
-
-    /// Height of the product's lowest point over the floor
-    #[arg(long, value_name = "LENGTH", default_value = "0.8 m", value_parser = options::table_height)]
-    table_height: f64,
-
-    /// Heights that the antenna moves over
-    #[arg(long, value_name = "LENGTHS", default_value = "1 m to 4 m", value_parser = options::antenna_heights)]
-    antenna_heights: [f64; 2],
-
-    /// Highest frequency to look at [default: what 47 CFR 15.33 asks for, at least 1 GHz]
-    #[arg(long, value_name = "FREQUENCY", value_parser = options::frequency)]
-    max_frequency: Option<f64>,
-
-    /// Spread (standard deviation) of what is not modelled, in dB; a judgement
-    #[arg(long, value_name = "DECIBELS", default_value = "5 dB", value_parser = options::decibels)]
-    sigma: f64,
+    #[command(flatten)]
+    against: Against,
 
     /// Draws of the tolerances of each net that has some; 0 is none
     #[arg(long, value_name = "NUMBER", default_value_t = 256, value_parser = options::draws)]
@@ -127,34 +101,17 @@ impl From<VerdictChoice> for Verdict {
 /// Ranks a board and hands out the answers. Ctrl-C leaves what is finished by then.
 pub fn run(options: &Options) -> Result<Ending, Refusal> {
     let stop = interrupt::stop_flag();
-    let limits = match options.limit.as_slice() {
-        [] => default_limits(),
-        files => input::limits(files)?,
-    };
+    let limits = options.against.limits()?;
     let reading = question::read(&options.board)?;
     let has_errors = question::has_errors(&reading);
     let board = reading.board.ok_or_else(|| {
         let file = options.board.display();
         Refusal::new(format!("there is no usable net in `{file}`"))
     })?;
-    check_places(options)?;
+    let (json, csv) = (options.json.as_deref(), options.csv.as_deref());
+    output::check_places(&[json, csv], options.plot.as_deref())?;
 
-    let (lowest_frequency_hz, top_frequency_hz) = scan_band_hz(&board, &limits);
-    let setup = CheckSetup {
-        limits,
-        distances_m: question::distances_m(&options.distance),
-        site: options.site.into(),
-        heights: Heights {
-            table_m: options.table_height,
-            antenna_m: options.antenna_heights,
-        },
-        lowest_frequency_hz,
-        top_frequency_hz: options.max_frequency.unwrap_or(top_frequency_hz),
-        model_sigma_db: options.sigma,
-    };
-    if let Some(objection) = cable_objection(&board, &setup) {
-        return Err(Refusal::new(objection));
-    }
+    let setup = options.against.setup(limits, &board)?;
     let ranking = rank(
         &board,
         &setup,
@@ -198,39 +155,15 @@ fn report(
     ranking: ringfield::study::Ranking,
     unusable: Vec<ringfield::board::UnusableNet>,
 ) -> RankReport {
-    let distances = setup.distances_m.iter();
     RankReport {
         board: board.title.clone(),
         site: setup.site,
-        limits: distances
-            .flat_map(|distance_m| limits_at(&setup.limits, *distance_m))
-            .collect(),
-        remarks: question::cable_remarks(board, setup.site)
-            .into_iter()
-            .chain(question::beyond_comparison(board, &setup))
-            .collect(),
+        limits: question::limits_everywhere(&setup),
+        remarks: question::remarks(board, &setup),
         distances_m: setup.distances_m,
         ranking,
         unusable,
     }
-}
-
-/// Finds out before the work whether every answer could be written.
-fn check_places(options: &Options) -> Result<(), Refusal> {
-    let json = options.json.as_deref().filter(|path| !is_stdout(path));
-    if let (Some(json), Some(csv)) = (json, options.csv.as_deref())
-        && json == csv
-    {
-        let path = csv.display();
-        return Err(Refusal::new(format!(
-            "two answers would be written to `{path}`"
-        )));
-    }
-    for path in [json, options.csv.as_deref()].into_iter().flatten() {
-        output::check_file(path)?;
-    }
-    let folder = options.plot.as_deref();
-    folder.map_or(Ok(()), output::check_new_folder)
 }
 
 fn is_stdout(path: &Path) -> bool {

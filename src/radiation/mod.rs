@@ -14,6 +14,7 @@ mod peak;
 pub mod plate;
 mod rational;
 mod site;
+mod vector;
 
 pub use large_plane::{LargePlane, Strongest, field_toward, strongest};
 pub use layout::{Layout, Segment};

@@ -71,6 +71,64 @@ fn the_readme_shows_what_the_example_gives() {
     );
 }
 
+/// Every listing of the README is what the command before it prints: each of its lines stands there, in the same order,
+/// the words as they are, numbers within 0.1 or 2 %. Dots stand for what is left out.
+#[test]
+fn every_listing_of_the_readme_is_what_its_command_prints() {
+    const COMMAND: &str = "    cargo run --release -- ";
+    let readme = include_str!("../../README.md");
+    let mut listings = 0;
+    let mut command = "";
+    let mut wrong = Vec::new();
+    let mut lines = readme.lines();
+    while let Some(line) = lines.next() {
+        command = line.strip_prefix(COMMAND).unwrap_or(command);
+        if line != "```text" {
+            continue;
+        }
+        let listing = lines.by_ref().take_while(|line| *line != "```");
+        let shown: Vec<&str> = listing
+            .filter(|line| !line.is_empty() && *line != "...")
+            .collect();
+        // A message about a file that is not shipped.
+        if shown[0].contains("error:") {
+            continue;
+        }
+        listings += 1;
+        let folder = Folder::new();
+        let words = command.split_whitespace().map(|word| match word {
+            "out" | "remedied.yaml" => folder.path(word),
+            word => word.to_owned(),
+        });
+        let words: Vec<String> = words.collect();
+        let given = run(&words.iter().map(String::as_str).collect::<Vec<_>>()).stdout;
+        let mut given = given.lines();
+        for shown in shown {
+            if !given.any(|given| is_alike(shown, given)) {
+                wrong.push(format!("{command}: {shown}"));
+                break;
+            }
+        }
+    }
+    assert!(listings >= 6, "{listings}");
+    assert!(wrong.is_empty(), "out of date:\n{}", wrong.join("\n"));
+}
+
+/// Whether two lines have the same words, and numbers that are close.
+fn is_alike(a: &str, b: &str) -> bool {
+    let words = |line: &str| -> Vec<String> {
+        let parts = line.split(|c: char| c.is_whitespace() || ",;:()".contains(c));
+        let parts = parts.filter(|part| !part.is_empty());
+        parts.map(str::to_owned).collect()
+    };
+    let (a, b) = (words(a), words(b));
+    let close = |a: &str, b: &str| match (a.parse::<f64>(), b.parse::<f64>()) {
+        (Ok(a), Ok(b)) => (a - b).abs() <= 0.1 + 1e-9 || (a - b).abs() <= 0.02 * b.abs(),
+        _ => a == b,
+    };
+    a.len() == b.len() && a.iter().zip(&b).all(|(a, b)| close(a, b))
+}
+
 /// The number of a cell such as `-5.4`, `82 %` or `<1 %`.
 fn number(cell: &str) -> f64 {
     let digits = cell.trim_matches([' ', '%', '<', '>']);

@@ -3,6 +3,7 @@
 use super::stand::Stand;
 use crate::board::{Cable, CableRun, Edge, Plane};
 use crate::radiation::plate::Wire;
+use crate::radiation::vector::dot;
 
 /// A cable that drops leaves the board this far, and
 const OUT_M: f64 = 0.1;
@@ -140,14 +141,11 @@ fn step(from: [f64; 3], way: [f64; 3], length_m: f64) -> [f64; 3] {
     std::array::from_fn(|axis| from[axis] + way[axis] * length_m)
 }
 
-fn dot(a: [f64; 3], b: [f64; 3]) -> f64 {
-    a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
     use crate::board::Orientation;
+    use crate::radiation::vector::{difference, norm};
     use approx::assert_relative_eq;
 
     fn plane(orientation: Orientation) -> Plane {
@@ -184,12 +182,7 @@ mod tests {
                         true,
                     );
                     let pairs = wire.points_m.windows(2);
-                    let all_m: f64 = pairs
-                        .map(|p| {
-                            let way: [f64; 3] = std::array::from_fn(|i| p[1][i] - p[0][i]);
-                            dot(way, way).sqrt()
-                        })
-                        .sum();
+                    let all_m: f64 = pairs.map(|p| norm(difference(p[1], p[0]))).sum();
                     assert_relative_eq!(all_m, length_m, max_relative = 1e-9);
                     for &point in &wire.points_m {
                         assert!(stand.height_m(point) > 0.0099);

@@ -7,6 +7,7 @@
 use super::sources::Wave;
 use crate::LIGHT_SPEED_M_PER_S;
 use crate::radiation::plate::{BranchPlace, Plate, Wire};
+use crate::radiation::vector::{difference, dot, norm, scaled};
 use num_complex::Complex64;
 use std::f64::consts::{PI, TAU};
 
@@ -103,13 +104,13 @@ impl Knots {
         let mut first = 0;
         for wire in wires {
             for pair in wire.points_m.windows(2) {
-                let along: [f64; 3] = std::array::from_fn(|axis| pair[1][axis] - pair[0][axis]);
-                let length_m = along.iter().map(|a| a * a).sum::<f64>().sqrt();
+                let along = difference(pair[1], pair[0]);
+                let length_m = norm(along);
                 let stretch = Stretch::new(length_m, k);
                 let count = stretch.len();
                 legs.push(Leg {
                     from_m: pair[0],
-                    way: along.map(|component| component / length_m),
+                    way: scaled(along, 1.0 / length_m),
                     length_m,
                     stretch,
                     first,
@@ -230,7 +231,7 @@ impl Knots {
             return Vec::new();
         };
         let at_m = leg.off_m(branch.centre_m).0;
-        let along_m: f64 = (0..3).map(|i| branch.along_m[i] * leg.way[i]).sum();
+        let along_m = dot(branch.along_m, leg.way);
         let weights = leg.stretch.weights(at_m).into_iter().enumerate();
         weights
             .map(|(knot, weight)| (2 * plane + leg.first + knot, weight * along_m))
@@ -246,13 +247,10 @@ impl Knots {
 impl Leg {
     /// How far along a point lies, and how far aside.
     fn off_m(&self, point_m: [f64; 3]) -> (f64, f64) {
-        let from: [f64; 3] = std::array::from_fn(|i| point_m[i] - self.from_m[i]);
-        let along_m: f64 = (0..3).map(|i| from[i] * self.way[i]).sum();
+        let from = difference(point_m, self.from_m);
+        let along_m = dot(from, self.way);
         let nearest_m = along_m.clamp(0.0, self.length_m);
-        let aside: f64 = (0..3)
-            .map(|i| (from[i] - self.way[i] * nearest_m).powi(2))
-            .sum();
-        (along_m, aside.sqrt())
+        (along_m, norm(difference(from, scaled(self.way, nearest_m))))
     }
 }
 

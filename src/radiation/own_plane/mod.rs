@@ -21,6 +21,7 @@ pub use lights::Aim;
 
 use super::plate::{Plate, Wire};
 use super::site::{FLOOR_ABSORBED_ABOVE_HZ, Site, TestSite};
+use super::vector::norm;
 use super::{Antenna, Layout, LitNet, Reading, near_field_factor};
 use crate::board::{Cable, CableRun, Plane};
 use crate::watch::Watch;
@@ -201,12 +202,7 @@ fn reach_m(points_m: &[[f64; 3]]) -> f64 {
         let least = along.clone().fold(f64::INFINITY, f64::min);
         (along.fold(f64::NEG_INFINITY, f64::max) - least) / 2.0
     };
-    [0, 1, 2]
-        .map(half)
-        .iter()
-        .map(|half| half * half)
-        .sum::<f64>()
-        .sqrt()
+    norm([0, 1, 2].map(half))
 }
 
 impl OwnPlane {

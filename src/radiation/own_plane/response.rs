@@ -14,7 +14,7 @@ use crate::watch::Watch;
 use num_complex::Complex64;
 use rayon::prelude::*;
 use std::f64::consts::TAU;
-use std::ops::Range;
+use std::ops::{Range, RangeInclusive};
 
 /// Samples that a board without cables needs up to 1 GHz, and how many more for each metre of conductor.
 const SAMPLES: f64 = 34.0;
@@ -25,8 +25,8 @@ const TOLERANCE: f64 = 1e-6;
 const CROWDED: f64 = 0.75;
 /// A fit may miss a fresh solution by this share of the largest value.
 const FRESH_TOLERANCE: f64 = 2e-3;
-/// More samples than this are never taken.
-const MOST_SAMPLES: usize = 700;
+/// Where so many samples are not enough, the frequencies themselves are solved.
+const MOST_SAMPLES: usize = 350;
 /// Mixtures of each kind of row that a fit is made for.
 const MIXTURES: usize = 8;
 
@@ -38,6 +38,8 @@ pub(super) struct Response {
     kept: Vec<Answer>,
     /// Through the kept answers; without it they are all the frequencies wanted.
     fit: Option<Rational>,
+    /// Where a fit holds.
+    band_hz: RangeInclusive<f64>,
 }
 
 /// What fields of 1 V/m at the knots make at one frequency, one row for each thing made: charge of each cell over
@@ -65,11 +67,13 @@ impl Response {
             knots: Knots::new(plate, wires, top_frequency_hz),
             kept: Vec::new(),
             fit: None,
+            band_hz: 0.0..=0.0,
         };
         let [Some(&first_hz), Some(&last_hz)] = [frequencies_hz.first(), frequencies_hz.last()]
         else {
             return response;
         };
+        response.band_hz = first_hz..=last_hz;
         let conductor_m: f64 =
             wires.iter().map(length_m).sum::<f64>() + plate.length_m.max(plate.width_m);
         let samples = SAMPLES + SAMPLES_PER_M * conductor_m * last_hz / 1e9;
@@ -84,11 +88,11 @@ impl Response {
             let crowded = fit.supports.len() as f64 > CROWDED * samples_hz.len() as f64;
             let trusted = !crowded
                 && response.fresh_deviation(&fit, &samples_hz, &answers, watch) < FRESH_TOLERANCE;
-            if trusted || 2 * samples_hz.len() > MOST_SAMPLES {
+            if trusted {
                 response.keep(fit, answers);
                 return response;
             }
-            if 2 * samples_hz.len() >= frequencies_hz.len() + samples_hz.len() {
+            if samples_hz.len() >= frequencies_hz.len().min(MOST_SAMPLES) {
                 response.kept = response.solve(frequencies_hz, watch);
                 return response;
             }
@@ -287,12 +291,12 @@ impl Response {
         let off = |answer: &Answer| (answer.frequency_hz / frequency_hz - 1.0).abs();
         let fresh;
         let parts: Vec<(Complex64, &Answer)> = match &self.fit {
-            Some(fit) => fit
+            Some(fit) if self.band_hz.contains(&frequency_hz) => fit
                 .shares(frequency_hz)
                 .into_iter()
                 .zip(&self.kept)
                 .collect(),
-            None => {
+            _ => {
                 let nearest = self.kept.iter().min_by(|a, b| off(a).total_cmp(&off(b)));
                 let answer = match nearest {
                     Some(answer) if off(answer) <= 1e-9 => answer,

@@ -1,9 +1,11 @@
 //! At which frequencies a response is solved, and the mixtures by which it is judged.
 
 use crate::radiation::plate::Wire;
+use crate::radiation::vector::{difference, norm};
 
 /// Below this, samples lie at even ratios, since fields there go by ratios.
 const EVEN_RATIOS_TO_HZ: f64 = 150e6;
+
 /// Frequencies from the first to the last: even ratios at the lower end, even steps above.
 pub(super) fn samples_hz(first_hz: f64, last_hz: f64, count: usize) -> Vec<f64> {
     let bend_hz = EVEN_RATIOS_TO_HZ.clamp(first_hz, last_hz);
@@ -33,11 +35,8 @@ pub(super) fn between(samples_hz: &[f64]) -> Vec<f64> {
 
 /// Along all its pieces.
 pub(super) fn length_m(wire: &Wire) -> f64 {
-    let apart = |pair: &[[f64; 3]]| {
-        let squares = (0..3).map(|i| (pair[1][i] - pair[0][i]).powi(2));
-        squares.sum::<f64>().sqrt()
-    };
-    wire.points_m.windows(2).map(apart).sum()
+    let pieces = wire.points_m.windows(2);
+    pieces.map(|pair| norm(difference(pair[1], pair[0]))).sum()
 }
 
 /// A sign without a pattern (the finaliser of SplitMix64; Steele, Lea & Flood, OOPSLA 2014, from memory).

@@ -1,6 +1,7 @@
 //! What lights the board from one place: a plane wave, or a dipole over the floor with its exact near field.
 
 use super::lights::Scan;
+use crate::radiation::vector::{cross, difference, dot, norm, scaled};
 use num_complex::Complex64;
 
 /// The fields of one source at a point.
@@ -60,9 +61,9 @@ fn of_dipoles(k: f64, places: &[([f64; 3], [[f64; 3]; 2]); 2], point_m: [f64; 3]
     };
     let mut waves = [none; 2];
     for (from_m, ways) in places {
-        let apart: [f64; 3] = std::array::from_fn(|i| point_m[i] - from_m[i]);
-        let distance_m = dot(apart, apart).sqrt();
-        let away = apart.map(|a| a / distance_m);
+        let apart = difference(point_m, *from_m);
+        let distance_m = norm(apart);
+        let away = scaled(apart, 1.0 / distance_m);
         let turn = k * distance_m;
         let spread = Complex64::cis(-turn) / distance_m;
         let near = Complex64::new(0.0, -1.0 / turn);
@@ -80,16 +81,4 @@ fn of_dipoles(k: f64, places: &[([f64; 3], [[f64; 3]; 2]); 2], point_m: [f64; 3]
         }
     }
     waves
-}
-
-fn dot(a: [f64; 3], b: [f64; 3]) -> f64 {
-    a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
-}
-
-fn cross(a: [f64; 3], b: [f64; 3]) -> [f64; 3] {
-    [
-        a[1] * b[2] - a[2] * b[1],
-        a[2] * b[0] - a[0] * b[2],
-        a[0] * b[1] - a[1] * b[0],
-    ]
 }

@@ -2,6 +2,7 @@
 
 use super::super::plate::Floor;
 use crate::board::{Orientation, Plane};
+use crate::radiation::vector::{difference, norm};
 
 /// The board on its table.
 #[derive(Debug, Clone, Copy)]
@@ -67,16 +68,9 @@ impl Stand {
 
     /// How far a point is from the turntable's axis, level.
     pub(super) fn off_axis_m(&self, point_m: [f64; 3]) -> f64 {
-        let away = |axis: usize| match axis == self.floor.axis {
-            true => 0.0,
-            false => point_m[axis] - self.middle_m[axis],
-        };
-        [0, 1, 2]
-            .map(away)
-            .iter()
-            .map(|away| away * away)
-            .sum::<f64>()
-            .sqrt()
+        let mut away = difference(point_m, self.middle_m);
+        away[self.floor.axis] = 0.0;
+        norm(away)
     }
 }
 
@@ -84,6 +78,7 @@ impl Stand {
 mod tests {
     use super::*;
     use crate::radiation::plate::Floor;
+    use crate::radiation::vector::cross;
 
     #[test]
     fn every_way_of_standing_is_right_handed() {
@@ -99,12 +94,8 @@ mod tests {
         ] {
             let stand = Stand::new(&plane, 0.8);
             let [a, b, up] = stand.ways;
-            let cross = [
-                a[1] * b[2] - a[2] * b[1],
-                a[2] * b[0] - a[0] * b[2],
-                a[0] * b[1] - a[1] * b[0],
-            ];
-            assert_eq!(cross, up);
+            let upwards = cross(a, b);
+            assert_eq!(upwards, up);
             let antenna_m = stand.place_m(3.0, 0.7, 2.5);
             assert!((stand.height_m(antenna_m) - 2.5).abs() < 1e-12);
             assert!((stand.off_axis_m(antenna_m) - 3.0).abs() < 1e-12);

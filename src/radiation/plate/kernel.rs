@@ -8,6 +8,7 @@
 //! Gauss points on the other, distant ones the first terms of the multipole series.
 
 use super::Floor;
+use crate::radiation::vector::{difference, dot, norm, scaled};
 
 /// A piece of conductor: a level rectangle, sides along x and y, or a thin straight wire.
 #[derive(Debug, Clone, Copy)]
@@ -277,29 +278,6 @@ fn over_rectangle(rectangle: &Piece, value: impl Fn([f64; 3]) -> f64) -> f64 {
     over_line(&column, |point, _| {
         over_line(&row(point[0]), |point, _| value(point))
     })
-}
-
-pub fn difference(a: [f64; 3], b: [f64; 3]) -> [f64; 3] {
-    std::array::from_fn(|axis| a[axis] - b[axis])
-}
-
-pub fn dot(a: [f64; 3], b: [f64; 3]) -> f64 {
-    a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
-}
-
-pub fn cross(a: [f64; 3], b: [f64; 3]) -> [f64; 3] {
-    std::array::from_fn(|axis| {
-        let (next, last) = ((axis + 1) % 3, (axis + 2) % 3);
-        a[next] * b[last] - a[last] * b[next]
-    })
-}
-
-pub fn norm(a: [f64; 3]) -> f64 {
-    dot(a, a).sqrt()
-}
-
-fn scaled(a: [f64; 3], factor: f64) -> [f64; 3] {
-    a.map(|component| component * factor)
 }
 
 #[cfg(test)]

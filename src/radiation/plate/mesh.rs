@@ -7,8 +7,9 @@
 //! and the stub, the charge of the wire's first half segment, is not the plate's.
 
 use super::axis::Axis;
-use super::kernel::{Piece, difference, norm};
+use super::kernel::Piece;
 use super::{Floor, Plate, Wire};
+use crate::radiation::vector::{difference, norm};
 
 /// How far a wire's first point may be from the edge, metres.
 const ON_EDGE_M: f64 = 1e-6;

@@ -4,6 +4,7 @@
 
 use super::mesh::{Branch, centre_m};
 use super::structure::Structure;
+use crate::radiation::vector::{difference, norm};
 use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
 use num_complex::Complex64;
 use std::f64::consts::{PI, TAU};
@@ -109,8 +110,8 @@ impl<'a> Sources<'a> {
 
 /// From a source to a point, how far, and exp(-jkR)/R.
 fn retarded(k: f64, from_m: [f64; 3], to_m: [f64; 3]) -> ([f64; 3], f64, Complex64) {
-    let apart: [f64; 3] = std::array::from_fn(|i| to_m[i] - from_m[i]);
-    let distance_m = apart.iter().map(|a| a * a).sum::<f64>().sqrt();
+    let apart = difference(to_m, from_m);
+    let distance_m = norm(apart);
     (
         apart,
         distance_m,
@@ -123,10 +124,7 @@ mod tests {
     use super::super::{Floor, Plate, Structure, Wire};
     use super::*;
     use crate::ETA0_OHM;
-
-    fn dot(a: [f64; 3], b: [f64; 3]) -> f64 {
-        a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
-    }
+    use crate::radiation::vector::dot;
 
     /// Electric field upwards and magnetic field along x and y of a current element, at a point (Balanis, Antenna
     /// Theory, section 4.2: the infinitesimal dipole).

@@ -11,11 +11,12 @@
 //! at its right speed.
 
 use super::axis::Axis;
-use super::kernel::{Piece, difference, dot, mean_inverse_distance_per_m, norm};
+use super::kernel::{Piece, mean_inverse_distance_per_m};
 use super::mesh::{Branch, Mesh, Node, centre_m};
 use super::solve::{Factors, Symmetric};
 use super::surface::{Currents, Probe};
 use super::{Floor, Plate, Wire};
+use crate::radiation::vector::{difference, dot, norm};
 use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
 use num_complex::Complex64;
 use std::f64::consts::{PI, TAU};

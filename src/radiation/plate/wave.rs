@@ -1,6 +1,6 @@
 //! Plane waves.
 
-use super::kernel::{cross, dot};
+use crate::radiation::vector::{cross, dot};
 use crate::{LIGHT_SPEED_M_PER_S, MU0_H_PER_M};
 use num_complex::Complex64;
 use std::f64::consts::TAU;

@@ -1,13 +1,9 @@
 //! What all nets of a board make together at one distance, with the biggest owners named.
 
-use super::axis::Axis;
-use super::canvas::Canvas;
-use super::page::{
-    LABEL_SIZE, LegendEntry, PANEL_BOTTOM, PANEL_LEFT, PANEL_RIGHT, legend, page, panel, shortened,
-};
-use super::picture::{Marker, Picture, Rect};
-use super::place::Obstacles;
+use super::page::{LABEL_SIZE, LegendEntry, page, shortened};
+use super::picture::{Marker, Picture};
 use super::readings::{Line, WorstHere, level_range};
+use super::spectrum::spectrum_canvas;
 use super::{BLUE, GREY};
 use crate::limit::LimitAt;
 use crate::show::rank::{RankReport, SumRow};
@@ -50,7 +46,7 @@ pub fn board_spectrum_picture(report: &RankReport, distance_m: f64) -> Picture {
     let frequencies = frequency_range(&lines);
     let (lowest, highest) = level_range(&lines, &limits, frequencies);
     let levels = (lowest, highest + ROOM_FOR_NAMES_DB);
-    let mut canvas = canvas(picture, frequencies, levels, hidden);
+    let mut canvas = spectrum_canvas(picture, &legend_entries(hidden), frequencies, levels);
     canvas.draw_harmonics(&lines);
     let drawn = canvas.draw_limits(&limits, false);
     let rows = rows(report, distance_m);
@@ -91,34 +87,6 @@ pub fn board_spectrum_picture(report: &RankReport, distance_m: f64) -> Picture {
         canvas.note("No net has a field at this distance", 1);
     }
     canvas.picture
-}
-
-fn canvas(
-    mut picture: Picture,
-    frequencies: (f64, f64),
-    levels: (f64, f64),
-    hidden: usize,
-) -> Canvas {
-    let top = legend(&mut picture, &legend_entries(hidden));
-    let rect = Rect {
-        left: PANEL_LEFT,
-        top,
-        right: PANEL_RIGHT,
-        bottom: PANEL_BOTTOM,
-    };
-    let mut canvas = Canvas {
-        x: Axis::log(
-            (frequencies.0 / 1e6, frequencies.1 / 1e6),
-            (rect.left, rect.right),
-        ),
-        y: Axis::linear(levels, (rect.bottom, rect.top)),
-        rect,
-        picture,
-        obstacles: Obstacles::default(),
-    };
-    let titles = (Some("Frequency (MHz)"), "Field strength (dBµV/m)");
-    panel(&mut canvas.picture, &rect, &canvas.x, &canvas.y, titles);
-    canvas
 }
 
 fn legend_entries(hidden: usize) -> Vec<LegendEntry> {

@@ -28,7 +28,7 @@ fn drawn(report: &CheckReport, net: &NetResult, distance_m: f64, parts: bool) ->
     }
     let limits: Vec<&LimitAt> = report.limits_at(distance_m).collect();
 
-    let mut picture = page(
+    let picture = page(
         &format!(
             "{}: estimated field at {}",
             net.name,
@@ -44,30 +44,8 @@ fn drawn(report: &CheckReport, net: &NetResult, distance_m: f64, parts: bool) ->
     let frequencies = frequency_range(net, &lines);
     let levels = level_range(&lines, &limits, frequencies);
     let hidden = lines.iter().filter(|line| line.level < levels.0).count();
-    let top = legend(&mut picture, &legend_entries(hidden, &lines));
-    let rect = Rect {
-        left: PANEL_LEFT,
-        top,
-        right: PANEL_RIGHT,
-        bottom: PANEL_BOTTOM,
-    };
-    let mut canvas = Canvas {
-        x: Axis::log(
-            (frequencies.0 / 1e6, frequencies.1 / 1e6),
-            (rect.left, rect.right),
-        ),
-        y: Axis::linear(levels, (rect.bottom, rect.top)),
-        rect,
-        picture,
-        obstacles: Obstacles::default(),
-    };
-    panel(
-        &mut canvas.picture,
-        &rect,
-        &canvas.x,
-        &canvas.y,
-        (Some("Frequency (MHz)"), "Field strength (dBµV/m)"),
-    );
+    let entries = legend_entries(hidden, &lines);
+    let mut canvas = spectrum_canvas(picture, &entries, frequencies, levels);
     canvas.draw_harmonics(&lines);
     canvas.draw_parts(&lines);
     let drawn = canvas.draw_limits(&limits, false);
@@ -92,6 +70,34 @@ fn drawn(report: &CheckReport, net: &NetResult, distance_m: f64, parts: bool) ->
         canvas.note("No harmonic in range has a field at this distance", 1);
     }
     canvas.picture
+}
+
+/// The empty panel of a spectrum over frequencies in Hz and levels in dBµV/m, below a legend.
+pub(super) fn spectrum_canvas(
+    mut picture: Picture,
+    entries: &[LegendEntry],
+    frequencies: (f64, f64),
+    levels: (f64, f64),
+) -> Canvas {
+    let rect = Rect {
+        left: PANEL_LEFT,
+        top: legend(&mut picture, entries),
+        right: PANEL_RIGHT,
+        bottom: PANEL_BOTTOM,
+    };
+    let mut canvas = Canvas {
+        x: Axis::log(
+            (frequencies.0 / 1e6, frequencies.1 / 1e6),
+            (rect.left, rect.right),
+        ),
+        y: Axis::linear(levels, (rect.bottom, rect.top)),
+        rect,
+        picture,
+        obstacles: Obstacles::default(),
+    };
+    let titles = (Some("Frequency (MHz)"), "Field strength (dBµV/m)");
+    panel(&mut canvas.picture, &rect, &canvas.x, &canvas.y, titles);
+    canvas
 }
 
 fn legend_entries(hidden: usize, lines: &[Line]) -> Vec<LegendEntry> {

@@ -6,8 +6,8 @@ use super::axis::Axis;
 use super::canvas::Canvas;
 use super::page::{LegendEntry, PANEL_BOTTOM, PANEL_LEFT, PANEL_RIGHT, legend, page, panel, text};
 use super::picture::{Anchor, Marker, Pen, Picture, Point, Rect, Text};
-use super::place::Obstacles;
 use super::readings::{Line, frequency_range, level_range, lines, worst};
+use super::spectrum::spectrum_canvas;
 use super::waveform::thinned;
 use super::{BLACK, BLUE, GREEN, GREY, ORANGE, PURPLE, VERMILLION};
 use crate::limit::LimitAt;
@@ -54,7 +54,7 @@ pub fn variants_spectrum_picture(
         })
         .collect();
     let limits: Vec<&LimitAt> = report.limits_at(distance_m).collect();
-    let mut picture = page(
+    let picture = page(
         &format!(
             "{}: estimated field at {} under {} variants",
             comparison.net,
@@ -73,30 +73,7 @@ pub fn variants_spectrum_picture(
     let entries: Vec<LegendEntry> = (comparison.variants.iter().enumerate())
         .map(|(index, variant)| entry(index, &with_margin(variant)))
         .collect();
-    let top = legend(&mut picture, &entries);
-    let rect = Rect {
-        left: PANEL_LEFT,
-        top,
-        right: PANEL_RIGHT,
-        bottom: PANEL_BOTTOM,
-    };
-    let mut canvas = Canvas {
-        x: Axis::log(
-            (frequencies.0 / 1e6, frequencies.1 / 1e6),
-            (rect.left, rect.right),
-        ),
-        y: Axis::linear(levels, (rect.bottom, rect.top)),
-        rect,
-        picture,
-        obstacles: Obstacles::default(),
-    };
-    panel(
-        &mut canvas.picture,
-        &rect,
-        &canvas.x,
-        &canvas.y,
-        (Some("Frequency (MHz)"), "Field strength (dBµV/m)"),
-    );
+    let mut canvas = spectrum_canvas(picture, &entries, frequencies, levels);
     for (index, lines) in spectra.iter().enumerate().rev() {
         canvas.draw_variant(lines, look(index));
     }
